@@ -1,0 +1,179 @@
+import type { ColumnType, Generated, JSONColumnType } from 'kysely';
+import type { Direction, Look, Snap, TopFaces } from '../../winding/types.ts';
+
+/** The tables as migrations/ leave them. bigint columns are read as numbers (all stay below 2^53); see connect.ts. */
+
+type When = ColumnType<Date, Date | string, Date | string>;
+type WhenMade = ColumnType<Date, Date | string | undefined, never>;
+type Big = ColumnType<number, number, number>;
+
+export interface WorkshopTable {
+	id: Generated<string>;
+	short_name: string;
+	name: string;
+	time_zone: string;
+	created_at: WhenMade;
+}
+
+export type Role = 'owner' | 'maker' | 'apprentice';
+
+export interface MemberTable {
+	workshop_id: string;
+	id: Generated<string>;
+	email: string;
+	name: string;
+	role: Role;
+	password_hash: string | null;
+	session_epoch: Generated<number>;
+	created_at: WhenMade;
+	removed_at: When | null;
+}
+
+export interface PasswordLinkTable {
+	workshop_id: string;
+	id: Generated<string>;
+	member_id: string;
+	token_hash: Buffer;
+	created_at: WhenMade;
+	expires_at: When;
+	used_at: When | null;
+}
+
+export interface WinderTable {
+	workshop_id: string;
+	id: Generated<string>;
+	name: string;
+	pulses_per_turn: Generated<number>;
+	rpm_max: Generated<number>;
+	sees_direction: Generated<boolean>;
+	forward_is: Generated<Direction>;
+	ease_early_turns: Generated<number>;
+	stop_early_turns: Generated<number>;
+	keep_after_s: number | null;
+	time_scale: Generated<number>;
+	link_key_hash: Buffer | null;
+	link_key_made_at: When | null;
+	created_at: WhenMade;
+	removed_at: When | null;
+}
+
+export interface CoilTable {
+	workshop_id: string;
+	id: Generated<string>;
+	name: string;
+	note: Generated<string>;
+	target: number;
+	look_every: number;
+	direction: Direction;
+	top_faces: Generated<TopFaces>;
+	tolerance_turns: Generated<number>;
+	place: number;
+	state: Generated<'waiting' | 'on-bench' | 'wound' | 'removed'>;
+	winder_id: string | null;
+	again_of_run: string | null;
+	created_by: string | null;
+	created_at: WhenMade;
+}
+
+export interface RunTable {
+	workshop_id: string;
+	id: Generated<string>;
+	coil_id: string;
+	winder_id: string;
+	coil_name: string;
+	target: number;
+	look_every: number;
+	direction: Direction;
+	top_faces: TopFaces;
+	tolerance_turns: number;
+	state: Generated<'open' | 'kept' | 'set-aside'>;
+	set_aside_reason: string | null;
+	taken_at: When;
+	started_at: When | null;
+	ended_at: When | null;
+	ended_by: string | null;
+	sticker: string | null;
+	turns: number | null;
+	on_bobbin: number | null;
+	winding_ms: Big | null;
+	stopped_ms: Big | null;
+	rpm_mean: number | null;
+	rpm_top: number | null;
+	taken_back: number | null;
+	looks: JSONColumnType<Look[]> | null;
+	snaps: JSONColumnType<Snap[]> | null;
+	faults: JSONColumnType<string[]> | null;
+	note: Generated<string>;
+}
+
+export interface RunTraceTable {
+	workshop_id: string;
+	run_id: string;
+	at_ms: number[];
+	turns: number[];
+	rpm: number[];
+}
+
+export interface BootTable {
+	workshop_id: string;
+	winder_id: string;
+	boot: string;
+	n: Big;
+	e: Big;
+	forward: Big;
+	reverse: Big;
+	t: Big;
+	first_at: When;
+	last_at: When;
+}
+
+export interface KeptLineTable {
+	workshop_id: string;
+	winder_id: string;
+	boot: string;
+	n: Big;
+	e: Big;
+	k: string | null;
+	f: Big;
+	v: Big;
+	r: number | null;
+	t: Big;
+	x: Big | null;
+	g: Big | null;
+	received_at: When;
+}
+
+export interface WinderStateTable {
+	workshop_id: string;
+	winder_id: string;
+	state: JSONColumnType<object>;
+	fact_no: Big;
+	saved_at: When;
+}
+
+export interface FactTable {
+	workshop_id: string;
+	winder_id: string;
+	no: Big;
+	run_id: string | null;
+	kind: string;
+	at: When;
+	turns: number | null;
+	detail: JSONColumnType<Record<string, string | number | boolean | null>>;
+	member_id: string | null;
+	tap_id: string | null;
+}
+
+export interface Database {
+	workshop: WorkshopTable;
+	member: MemberTable;
+	password_link: PasswordLinkTable;
+	winder: WinderTable;
+	coil: CoilTable;
+	run: RunTable;
+	run_trace: RunTraceTable;
+	boot: BootTable;
+	kept_line: KeptLineTable;
+	winder_state: WinderStateTable;
+	fact: FactTable;
+}
