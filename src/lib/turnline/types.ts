@@ -3,7 +3,7 @@
  * Key names are the protocol's own short keys, so that a line and its type can be read side by side.
  */
 
-/** Kinds of event a winder reports. */
+/** Kinds of event this version gives a meaning to. */
 export const eventKinds = ['go', 'stop', 'rev', 'ease', 'look', 'at', 'over', 'btn', 'bufov'] as const;
 export type EventKind = (typeof eventKinds)[number];
 
@@ -52,7 +52,11 @@ export interface Tick extends Totals {
 
 export interface Event extends Totals {
 	verb: 'E';
-	k: EventKind;
+	/**
+	 * One of `eventKinds`, or a word this version does not know: still an event with totals, kept and acknowledged, since a
+	 * refused one would hold back every later acknowledgement of that boot.
+	 */
+	k: string;
 	r?: number;
 	x?: number;
 	g?: number;
