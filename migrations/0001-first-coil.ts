@@ -45,7 +45,7 @@ export async function up(db: Kysely<never>): Promise<void> {
 		create table member (
 			workshop_id uuid not null references workshop (id),
 			id uuid not null default gen_random_uuid(),
-			email text not null unique check (email = lower(email) and char_length(email) <= 254),
+			email text not null check (email = lower(email) and char_length(email) <= 254),
 			name text not null check (char_length(name) between 1 and 80),
 			role text not null check (role in ('owner', 'maker', 'apprentice')),
 			password_hash text,
@@ -54,6 +54,8 @@ export async function up(db: Kysely<never>): Promise<void> {
 			removed_at timestamptz,
 			primary key (workshop_id, id)
 		)`);
+	// One account belongs to one workshop; who was removed from one may join another.
+	await run(`create unique index member_email on member (email) where removed_at is null`);
 
 	await run(`
 		create table password_link (
@@ -257,7 +259,9 @@ export async function up(db: Kysely<never>): Promise<void> {
 		await run(`grant select, insert, update, delete on ${table} to turnstead_app`);
 	}
 	await run(`alter table workshop enable row level security`);
-	await run(`create policy own_workshop on workshop using (id = current_workshop()) with check (id = current_workshop())`);
+	await run(
+		`create policy own_workshop on workshop using (id = current_workshop()) with check (id = current_workshop())`
+	);
 	await run(`grant select, update on workshop to turnstead_app`);
 
 	// Found before the workshop is known; each answers one question about one secret or one address.

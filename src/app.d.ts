@@ -1,0 +1,19 @@
+import type { Kysely } from 'kysely';
+import type { Database } from '$lib/server/db/schema.ts';
+import type { Member } from '$lib/server/db/people.ts';
+import type { Session } from '@auth/sveltekit';
+
+declare global {
+	namespace App {
+		interface Locals {
+			/** Who is signed in, as the database knew them when the request came; null: nobody. */
+			member: Member | null;
+			/** The pool as turnstead_app; scoped work goes through inWorkshop. */
+			db: Kysely<Database>;
+			/** Auth.js's own; use `member`. */
+			auth: () => Promise<Session | null>;
+		}
+	}
+}
+
+export {};
