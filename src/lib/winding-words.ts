@@ -1,0 +1,208 @@
+import { turnsText, wholeText } from './format.ts';
+import type {
+	Direction,
+	FactKind,
+	LinkState,
+	LookNote,
+	Notice,
+	Question,
+	RunState,
+	TopFaces
+} from './winding/types.ts';
+
+/**
+ * The plain words for everything the record and the pages say about a winder and its coil. One place, complete by type:
+ * a new kind of fact does not compile until it has its words.
+ */
+
+/** What a fact carries when it is told, from the record or live. */
+export interface ToldFact {
+	turns: number | null;
+	detail: Readonly<Record<string, string | number | boolean | null>>;
+}
+
+/** A whole number of the detail, or null. */
+function count(fact: ToldFact, key: string): number | null {
+	const value = fact.detail[key];
+	return typeof value === 'number' && Number.isFinite(value) ? value : null;
+}
+
+function word(fact: ToldFact, key: string): string | null {
+	const value = fact.detail[key];
+	return typeof value === 'string' && value !== '' ? value : null;
+}
+
+/** "text 12 turns more" only when the number is known. */
+function withTurns(before: string, turns: number | null, after = ''): string {
+	return turns === null ? before : `${before} ${turnsText(turns)}${after}`;
+}
+
+const lookWords: Record<LookNote, string> = {
+	even: 'looks even',
+	'high-at-one-side': 'high at one side',
+	'guided-again': 'guided again'
+};
+
+/** The maker's word on a look; null when the winder went on without one. */
+export function lookNoteText(note: LookNote | null): string {
+	return note === null ? 'wound on without a word' : lookWords[note];
+}
+
+function knownLookNote(text: string | null): LookNote | null {
+	return text !== null && text in lookWords ? (text as LookNote) : null;
+}
+
+const factWords: Record<FactKind, (fact: ToldFact) => string> = {
+	taken: () => 'The bench took this coil',
+	moved: () => 'Began to turn',
+	started: () => 'Started',
+	'started-here': () => 'Zero set here instead',
+	stopped: () => 'Stood still',
+	'went-on': () => 'Went on',
+	'look-due': (fact) => withTurns('Look cue for', count(fact, 'mark')),
+	'look-seen': (fact) => {
+		const note = knownLookNote(word(fact, 'note'));
+		const mark = count(fact, 'mark');
+		const at = mark === null ? 'Look' : `Look for ${wholeText(mark)}`;
+		return `${at}: ${lookNoteText(note)}`;
+	},
+	'look-passed': (fact) => {
+		const mark = count(fact, 'mark');
+		return mark === null
+			? 'A look passed without standing still'
+			: `Look for ${wholeText(mark)} passed without standing still`;
+	},
+	eased: () => 'Ease off cue',
+	'stop-cue': () => 'Stop cue',
+	over: (fact) => {
+		const over = count(fact, 'over');
+		return over === null ? 'Went over the target' : `Went over the target by ${wholeText(over)}`;
+	},
+	'on-count': () => 'On count',
+	'taken-back': (fact) => withTurns('Taken back', count(fact, 'back') ?? count(fact, 'turns')),
+	'taking-off': () => 'Taking off: turns from here are subtracted',
+	'taking-off-done': () => 'Taking off ended: turns count up again',
+	snapped: () => 'Wire snapped',
+	'snap-placed': (fact) => withTurns('Wire left the bobbin at', count(fact, 'leftAt') ?? fact.turns),
+	'no-snap': () => 'The wire had held after all',
+	jumped: (fact) => {
+		const take = count(fact, 'take');
+		return take === null
+			? 'The count jumped; the total before it was held'
+			: `The count jumped to ${wholeText(take)}; the total before it was held`;
+	},
+	'jump-taken': (fact) => withTurns('The new count was taken:', count(fact, 'take') ?? fact.turns),
+	'jump-kept': (fact) => withTurns('The count before the jump was kept:', count(fact, 'keep') ?? fact.turns),
+	'jump-gone': () => 'The jump went away by itself; nothing was taken from it',
+	restarted: (fact) => {
+		const uncertain = count(fact, 'uncertain');
+		if (uncertain === null) return 'The winder restarted; how many turns it missed cannot be known';
+		return `The winder restarted; up to ${turnsText(uncertain)} uncertain`;
+	},
+	'restart-answered': (fact) => withTurns('After the restart the count went on from', fact.turns),
+	bridged: () => 'The winder restarted and kept its totals; no turn was lost',
+	'pulses-ended': () => 'Pulses ended at speed: the spindle stopped, or the sensor lost its magnet',
+	'said-stopped': () => 'Answered: the spindle had stopped',
+	'said-not-stopped': () => 'Answered: it had not stopped; the count from here is not to be trusted',
+	'which-winder': (fact) => {
+		const name = word(fact, 'name') ?? word(fact, 'otherName');
+		return name ? `Another winder turned as well: ${name}` : 'Another winder turned as well';
+	},
+	kept: (fact) => withTurns('Kept with', fact.turns),
+	undone: () => 'Undone: not kept after all',
+	'set-aside': (fact) => {
+		const reason = word(fact, 'reason');
+		return reason ? `Set aside: ${reason}` : 'Set aside';
+	},
+	'tap-waiting': () => 'A tap waited for the winder’s lines',
+	'event-lost': () => 'An event of the winder was lost; the count is not affected',
+	'line-mismatch': () => 'A line came twice with different content; the first was kept',
+	'buffer-overflow': () => 'The winder’s memory was full: the count is exact, some detail of speed is missing',
+	bouncing: () => 'The sensor bounced; the count is not affected',
+	'missed-pulses': (fact) => withTurns('Turns may have been missed:', count(fact, 'missed') ?? count(fact, 'g')),
+	'pulses-per-turn': () => 'Speed and count did not agree: two pulses a turn?',
+	'clock-odd': () => 'The winder’s clock ran fast or slow; the count is right, speeds are not to be relied on',
+	'two-winders': () => 'Two winders share this name',
+	'caught-up': () => 'Lines that had waited arrived; the count caught up',
+	'wrong-way': () => 'The spindle turned the other way than this coil asks for'
+};
+
+export function factText(kind: string, fact: ToldFact): string {
+	// A record may hold a kind that a later version wrote; its name is better than nothing.
+	return kind in factWords ? factWords[kind as FactKind](fact) : kind.replaceAll('-', ' ');
+}
+
+/** Faults seen during a run, short, for a list. */
+export function faultText(kind: string): string {
+	return factText(kind, { turns: null, detail: {} });
+}
+
+const runStateWords: Record<RunState, string> = {
+	waiting: 'waiting to start',
+	winding: 'winding',
+	easing: 'easing off',
+	'at-look': 'at a look',
+	paused: 'paused',
+	'taking-off': 'taking off',
+	'on-count': 'on count',
+	kept: 'kept',
+	'set-aside': 'set aside'
+};
+
+export function runStateText(state: RunState): string {
+	return runStateWords[state];
+}
+
+const questionWords: Record<Question, string> = {
+	jump: 'asks: the count jumped',
+	restarted: 'asks: the winder restarted',
+	'did-you-stop': 'asks: did you stop?',
+	'which-winder': 'asks: which winder?',
+	snapped: 'asks: where did the wire leave?'
+};
+
+export function questionText(question: Question): string {
+	return questionWords[question];
+}
+
+const linkWords: Record<LinkState, string> = {
+	live: 'live',
+	old: 'late: the last line is a little old',
+	'no-signal': 'no signal',
+	never: 'never linked'
+};
+
+export function linkText(link: LinkState): string {
+	return linkWords[link];
+}
+
+const noticeWords: Record<Notice, string> = {
+	bouncing: 'The sensor is bouncing. The count is not affected.',
+	'missed-pulses': 'Turns may have been missed. They are not added to the count.',
+	'pulses-per-turn': 'Speed and count do not agree: two pulses a turn? Use the count check.',
+	'clock-odd': 'The winder’s clock runs fast or slow: the count is right, the speed is not to be relied on.',
+	'two-winders': 'Two winders share this name. Give each its own link key.',
+	'line-errors': 'More than 1 in 100 lines arrive damaged. Look at the cable or the radio.',
+	'wrong-way': 'The spindle turns the other way than the coil asks for.',
+	'catching-up': 'Lines that waited are arriving.'
+};
+
+export function noticeText(notice: Notice): string {
+	return noticeWords[notice];
+}
+
+/** "counter-clockwise ↺": always the wire as seen from the top of the bobbin. */
+export function directionText(direction: Direction): string {
+	return direction === 'clockwise' ? 'clockwise ↻' : 'counter-clockwise ↺';
+}
+
+/** The whole sentence, so that nobody has to guess from which end. */
+export function directionSentence(direction: Direction, topFaces: TopFaces): string {
+	return `Seen from the top of the bobbin, the wire goes on ${directionText(direction)}. Top faces ${topFaces}.`;
+}
+
+/** "12 over", "2 short", "on count". */
+export function offSentence(off: number): string {
+	if (off === 0) return 'on the mark';
+	return off > 0 ? `${wholeText(off)} over` : `${wholeText(-off)} short`;
+}
