@@ -247,21 +247,6 @@ export async function takeNextCoil(
 	return { runId: run.id, plan: toPlan(toCoil(row)), sticker };
 }
 
-/**
- * A coil that has not turned goes back to the head of the queue and its empty run goes. What was noted of it stays
- * with the winder, so that the numbers of its facts keep no gap.
- */
-export async function putBackCoil(trx: Trx, workshopId: string, runId: string, coilId: string): Promise<void> {
-	await backToHead(trx, workshopId, coilId);
-	await trx
-		.updateTable('fact')
-		.set({ run_id: null })
-		.where('workshop_id', '=', workshopId)
-		.where('run_id', '=', runId)
-		.execute();
-	await trx.deleteFrom('run').where('workshop_id', '=', workshopId).where('id', '=', runId).execute();
-}
-
 /** What was to be wound is still to be wound: first in the queue again. */
 export async function backToHead(trx: Trx, workshopId: string, coilId: string): Promise<void> {
 	await trx
