@@ -62,13 +62,14 @@ export interface Event extends Totals {
 	g?: number;
 }
 
-export interface Answer {
-	verb: 'OK' | 'NO';
+interface AnswerAs<V extends string> {
+	verb: V;
 	b: string;
 	/** The command answered; absent on a NO to something that had no id. */
 	id?: number;
 	why?: string;
 }
+export type Answer = AnswerAs<'OK'> | AnswerAs<'NO'>;
 
 export interface Bye {
 	verb: 'BYE';

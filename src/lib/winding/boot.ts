@@ -178,7 +178,14 @@ export function addLine(boot: BootState, n: number, sum: number): void {
 /** A small sum of a line's content (FNV-1a over its figures), to tell a resend from another line of the same number. */
 export function sumOf(point: Point): number {
 	let hash = 0x811c9dc5;
-	for (const figure of [point.t, point.f, point.v, point.r, point.e, point.k ? point.k.charCodeAt(0) + point.k.length : 0]) {
+	for (const figure of [
+		point.t,
+		point.f,
+		point.v,
+		point.r,
+		point.e,
+		point.k ? point.k.charCodeAt(0) + point.k.length : 0
+	]) {
 		hash ^= figure | 0;
 		hash = Math.imul(hash, 0x01000193) >>> 0;
 	}

@@ -155,19 +155,19 @@ export function signOf(plan: CoilPlan, config: WinderConfig): 1 | -1 {
 	return asForward === (plan.topFaces === 'out') ? 1 : -1;
 }
 
-type Reads = { f: number; v: number };
+type Reads = { b: string; f: number; v: number };
 
-function endOf(stretch: Stretch, boots: readonly BootState[]): Reads {
+function endOf(stretch: Stretch, boots: readonly BootState[]): { f: number; v: number } {
 	if (stretch.toF !== null && stretch.toV !== null) return { f: stretch.toF, v: stretch.toV };
 	const boot = boots.find((candidate) => candidate.b === stretch.b);
 	return boot ? { f: boot.f, v: boot.v } : { f: stretch.fromF, v: stretch.fromV };
 }
 
-/** Turns counted: signed sum of the stretches. `at` reads the open stretch at other totals than those of now. */
+/** Turns counted: signed sum of the stretches. `at` reads one boot at other totals than those of now. */
 export function turnsOf(run: RunCore, boots: readonly BootState[], at?: Reads): number {
 	let turns = run.adjust;
 	for (const stretch of run.stretches) {
-		const end = at && stretch.toF === null ? at : endOf(stretch, boots);
+		const end = at && at.b === stretch.b && stretch.toF === null ? at : endOf(stretch, boots);
 		turns += stretch.sign * (end.f - end.v - (stretch.fromF - stretch.fromV));
 	}
 	return turns;
@@ -255,12 +255,7 @@ export function windingMsOf(run: RunCore, untilAxis: number): number {
 /**
  * @param nowAxis latest moment heard of, on the common axis; a closed run is read at its end
  */
-export function figuresOf(
-	run: RunCore,
-	boots: readonly BootState[],
-	nowAxis: number,
-	oneSensor: boolean
-): RunFigures {
+export function figuresOf(run: RunCore, boots: readonly BootState[], nowAxis: number, oneSensor: boolean): RunFigures {
 	const turns = turnsOf(run, boots);
 	const until = run.endAxis ?? nowAxis;
 	const windingMs = run.startAxis === null ? 0 : windingMsOf(run, until);
