@@ -1,4 +1,4 @@
-import type { DeviceLine, Event, Hi, HostLine, SetPlan, Tick } from '../turnline/types.ts';
+import type { DeviceLine, Event, EventKind, Hi, HostLine, SetPlan, Tick } from '../turnline/types.ts';
 import {
 	addEvent,
 	addLine,
@@ -69,6 +69,8 @@ export interface WinderState {
 	lastEndedAt: number | null;
 	/** Totals where the last run ended, the zero of the next one; and what moved since. */
 	end: { b: string; f: number; v: number; at: number; moves: [number, 0 | 1][] } | null;
+	/** Totals since which the winder has had no coil. */
+	idle: { b: string; f: number; v: number } | null;
 	/** The last plan told to the device. */
 	set: { id: number; content: string; b: string; answered: boolean; sentAt: number } | null;
 	commandId: number;
@@ -91,7 +93,7 @@ export interface KeptLine {
 	b: string;
 	n: number;
 	e: number;
-	k: string | null;
+	k: EventKind | null;
 	f: number;
 	v: number;
 	r: number | null;
@@ -145,6 +147,7 @@ export function newWinder(): WinderState {
 		last: null,
 		lastEndedAt: null,
 		end: null,
+		idle: null,
 		set: null,
 		commandId: 0,
 		askedAt: 0,
@@ -429,6 +432,7 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 
 	const deviceGapMs = first ? 0 : point.t - boot.t;
 	const before = { turning: boot.turning, t: boot.t };
+	if (!s.run && s.idle?.b !== boot.b) s.idle = { b: boot.b, f: first ? point.f : boot.f, v: first ? point.v : boot.v };
 	const counts = raise(d, boot, point, receivedAt);
 	keepTrail(s, point);
 
@@ -859,6 +863,7 @@ export function takeCoil(
 	else {
 		s.run = run;
 		s.end = null;
+		s.idle = null;
 	}
 	say(d, 'taken', now, { runId: run.runId, turns: null, detail: { coil: run.plan.name, target } });
 	if (boot) {
@@ -1186,6 +1191,7 @@ function act(d: Draft, run: RunCore, tap: Tap, madeAt: number, point: Point | nu
 		case 'other-winder':
 			say(d, 'which-winder', madeAt, { detail: { answer: tap.kind }, ...by });
 			clearQuestion(run);
+			if (tap.kind === 'other-winder') s.run = null;
 			return;
 		case 'undo':
 			return;
@@ -1489,28 +1495,66 @@ export function figuresOf(state: WinderState, config: WinderConfig, runId: strin
 	return run ? readFigures(state, config, run) : null;
 }
 
-/** The span of device time a run covers in each boot, so that its lines can be found again. */
-export function spanOf(
-	state: WinderState,
-	config: WinderConfig,
-	runId: string
-): { b: string; fromT: number; toT: number | null }[] {
+/** A stretch of a run in one boot: turns at a moment = base + sign · (f − v − zeroNet), for t from `fromT` to `toT`. */
+export interface Span {
+	b: string;
+	sign: 1 | -1;
+	base: number;
+	zeroNet: number;
+	fromT: number;
+	toT: number | null;
+}
+
+/** The stretches of the run of that id, so that its lines can be found again. Device times are unwrapped ms. */
+export function spansOf(state: WinderState, config: WinderConfig, runId: string): Span[] {
 	const run = [state.run, state.upNext].find((known) => known?.runId === runId);
 	if (!run || run.startAxis === null) return [];
-	return [...new Set(run.stretches.map((stretch) => stretch.b))].flatMap((b) => {
-		const boot = state.boots.find((known) => known.b === b);
-		if (!boot) return [];
-		const zero = axisAt(boot, 0, config.timeScale);
-		return [{ b, fromT: run.startAxis! - zero, toT: run.endAxis === null ? null : run.endAxis - zero }];
-	});
+	let base = run.adjust;
+	const spans: Span[] = [];
+	for (const stretch of run.stretches) {
+		const boot = state.boots.find((known) => known.b === stretch.b);
+		const zeroNet = stretch.fromF - stretch.fromV;
+		if (boot) {
+			const zero = axisAt(boot, 0, config.timeScale);
+			const toT = run.endAxis === null ? null : run.endAxis - zero;
+			spans.push({ b: stretch.b, sign: stretch.sign, base, zeroNet, fromT: run.startAxis - zero, toT });
+		}
+		const end = { f: stretch.toF ?? boot?.f ?? stretch.fromF, v: stretch.toV ?? boot?.v ?? stretch.fromV };
+		base += stretch.sign * (net(end) - zeroNet);
+	}
+	return spans;
+}
+
+/** Runs this state holds: the one on the bench and the one up next. */
+export const runIdsOf = (state: WinderState): string[] =>
+	[state.run, state.upNext].flatMap((run) => (run ? [run.runId] : []));
+
+/** Turns made since the winder has had no coil; 0 while it has one. */
+export function idleTurns(state: WinderState): number {
+	const boot = state.boots[0];
+	if (state.run || !boot || !state.idle || state.idle.b !== boot.b) return 0;
+	return boot.f + boot.v - state.idle.f - state.idle.v;
+}
+
+/** What is taken in of the current boot: committed with every batch. A jump that waits for a word is not in it. */
+export interface Cursor {
+	boot: string;
+	n: number;
+	e: number;
+	forward: number;
+	reverse: number;
+	t: number;
+}
+
+export function cursorOf(state: WinderState): Cursor | null {
+	const boot = state.boots[0];
+	if (!boot) return null;
+	return { boot: boot.b, n: boot.n, e: boot.e, forward: boot.f, reverse: boot.v, t: boot.t };
 }
 
 /** A cursor that committed after the state was last written: the greatest totals win. */
-export function mergeCursor(
-	state: WinderState,
-	cursor: { b: string; n: number; e: number; f: number; v: number; t: number }
-): WinderState {
-	const known = state.boots.find((boot) => boot.b === cursor.b);
+export function mergeCursor(state: WinderState, cursor: Cursor): WinderState {
+	const known = state.boots.find((boot) => boot.b === cursor.boot);
 	if (!known) return state;
 	const boot = copyBoot(known);
 	if (cursor.n > boot.n) addLine(boot, cursor.n, 0);
@@ -1522,8 +1566,8 @@ export function mergeCursor(
 	boot.eBeyond = boot.eBeyond.filter((e) => e > boot.e);
 	boot.eTop = Math.max(boot.eTop, boot.e);
 	if (!boot.held) {
-		boot.f = Math.max(boot.f, cursor.f);
-		boot.v = Math.max(boot.v, cursor.v);
+		boot.f = Math.max(boot.f, cursor.forward);
+		boot.v = Math.max(boot.v, cursor.reverse);
 	}
 	boot.t = Math.max(boot.t, cursor.t);
 	return { ...state, boots: state.boots.map((entry) => (entry === known ? boot : entry)) };
