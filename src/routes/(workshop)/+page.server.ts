@@ -1,0 +1,6 @@
+import { redirect } from '@sveltejs/kit';
+
+/** The day begins at the benches. */
+export function load() {
+	redirect(307, '/wind');
+}

@@ -1,0 +1,38 @@
+import { guard } from '$lib/server/auth/guard';
+import { bookPeople, bookTotals, listBook } from '$lib/server/db/book';
+import { wholeBook } from '$lib/book-filter';
+import { inWorkshop } from '$lib/server/db/connect';
+import { findCharactersMax, parseBookQuery } from './find';
+import type { PageServerLoad } from './$types';
+
+/** A printed page of A4 or Letter holds about this many lines twice; more only makes the search slower to read. */
+const linesPerPage = 50;
+
+export const load: PageServerLoad = async ({ locals, url }) => {
+	const member = guard(locals, 'book.read');
+	const { workshopId, timeZone } = member;
+	const query = parseBookQuery(url.searchParams);
+	const found = await inWorkshop(locals.db, workshopId, async (trx) => {
+		const totals = await bookTotals(trx, workshopId, timeZone, query.filter);
+		const pages = Math.max(1, Math.ceil(totals.runs / linesPerPage));
+		const page = Math.min(query.page, pages);
+		const lines = await listBook(trx, workshopId, timeZone, query.filter, {
+			sort: query.sort,
+			descending: query.descending,
+			offset: (page - 1) * linesPerPage,
+			limit: linesPerPage
+		});
+		const everything = totals.runs > 0 ? totals : await bookTotals(trx, workshopId, timeZone, wholeBook);
+		return { totals, pages, page, lines, empty: everything.runs === 0, ...(await bookPeople(trx, workshopId)) };
+	});
+	return {
+		...found,
+		timeZone,
+		sort: query.sort,
+		descending: query.descending,
+		typed: query.typed,
+		refused: query.refused,
+		findCharactersMax,
+		filtered: Object.values(query.typed).some((value) => value !== '')
+	};
+};

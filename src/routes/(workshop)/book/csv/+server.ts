@@ -1,0 +1,77 @@
+import { error } from '@sveltejs/kit';
+import { sheetTimeText } from '$lib/format';
+import { guard } from '$lib/server/auth/guard';
+import { csvFile } from '$lib/server/csv';
+import { bookTotals, listBook } from '$lib/server/db/book';
+import { inWorkshop } from '$lib/server/db/connect';
+import { wholeText } from '$lib/format';
+import { parseBookQuery } from '../find';
+import type { RequestHandler } from './$types';
+
+/** About 10 MB of text, made in memory; ten years of a busy workshop. */
+const linesMax = 50_000;
+
+/** The runs of the same filter and order as the page, all pages of it. */
+export const GET: RequestHandler = async ({ locals, url }) => {
+	const { workshopId, timeZone } = guard(locals, 'book.read');
+	const { filter, sort, descending } = parseBookQuery(url.searchParams);
+	const lines = await inWorkshop(locals.db, workshopId, async (trx) => {
+		const { runs } = await bookTotals(trx, workshopId, timeZone, filter);
+		if (runs > linesMax) {
+			error(
+				413,
+				`${wholeText(runs)} runs are more than one file holds (${wholeText(linesMax)}). Narrow the dates and save again.`
+			);
+		}
+		return listBook(trx, workshopId, timeZone, filter, { sort, descending, offset: 0, limit: linesMax });
+	});
+	const file = csvFile(
+		[
+			`When (${timeZone})`,
+			'When (UTC)',
+			'Coil',
+			'Sticker',
+			'Winder',
+			'Wanted (turns)',
+			'Wound, on the bobbin (turns)',
+			'Counted (turns)',
+			'Off by (turns)',
+			'Winding (s)',
+			'Stopped (s)',
+			'Mean rpm',
+			'Top rpm',
+			'Who',
+			'State',
+			'Reason',
+			'Note',
+			'Run'
+		],
+		lines.map((line) => [
+			sheetTimeText(line.endedAt, timeZone),
+			sheetTimeText(line.endedAt, 'UTC'),
+			line.name,
+			line.sticker,
+			line.winderName,
+			line.target,
+			line.onBobbin,
+			line.turns,
+			line.state === 'kept' ? line.onBobbin - line.target : null,
+			Math.round(line.windingMs / 1000),
+			Math.round(line.stoppedMs / 1000),
+			Math.round(line.rpmMean),
+			Math.round(line.rpmTop),
+			line.who ?? 'by itself',
+			line.state === 'kept' ? 'kept' : 'set aside',
+			line.reason ?? '',
+			line.note,
+			line.id
+		])
+	);
+	return new Response(file, {
+		headers: {
+			'content-type': 'text/csv; charset=utf-8',
+			'content-disposition': 'attachment; filename="bench-book.csv"',
+			'cache-control': 'no-store'
+		}
+	});
+};
