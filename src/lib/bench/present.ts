@@ -1,0 +1,785 @@
+import { durationText, turnsText, wallTime, wholeText } from '../format.ts';
+import { linkStateOf } from '../winding/link.ts';
+import type { LinkState, LiveView, Notice, RunView, TapKind } from '../winding/types.ts';
+
+/** Own ground, word, shape and sound for each state: colour never speaks alone. */
+export type Ground = 'plain' | 'ease' | 'look' | 'stop' | 'mark' | 'no-signal';
+export type Shape =
+	| 'bobbin-empty'
+	| 'bobbin'
+	| 'bobbin-resting'
+	| 'bobbin-unwinding'
+	| 'falling-bars'
+	| 'eye'
+	| 'bar'
+	| 'tick'
+	| 'tag'
+	| 'tag-aside'
+	| 'fork'
+	| 'broken-line';
+
+/** What the maker is asked by the screen itself, one step before a tap is made. */
+export type Asking = 'set-aside' | 'true-count' | null;
+
+/** Reasons offered for setting a coil aside: no text box stands on the bench. */
+export const setAsideReasons = ['wire snapped', 'wound unevenly', 'wrong wire or bobbin', 'only a trial'] as const;
+
+export type Act =
+	| { do: 'tap'; tap: TapKind }
+	| { do: 'ask'; asking: Asking }
+	| { do: 'step'; by: number }
+	| { do: 'heard'; yes: boolean }
+	| { do: 'go'; href: string }
+	| { do: 'screen' };
+
+export interface BenchTap {
+	/** Stable within a state, so that a button is not replaced under the finger. */
+	key: string;
+	label: string;
+	/** The one meaning of the state stands large; what is rarer stands small beside it. */
+	size: 'main' | 'small';
+	act: Act;
+	enabled: boolean;
+}
+
+/** A count to step or type: where the wire left, or the true count after a restart. */
+export interface CountEntry {
+	label: string;
+	value: number;
+	min: number;
+	max: number;
+	confirm: string;
+	tap: 'snap-at' | 'true-count';
+}
+
+/** What sounds, as a state; the player makes edges and rhythms of it. */
+export interface SoundNow {
+	cue: 'quiet' | 'look-coming' | 'look' | 'ease' | 'stop' | 'over' | 'no-signal';
+	/** Differs whenever the same cue comes anew. */
+	key: string;
+	/** ease: how near the stop is, 0 at its beginning, 1 at the stop. */
+	nearness: number;
+	/** over: turns beyond the target. */
+	over: number;
+}
+
+export interface BenchModel {
+	ground: Ground;
+	shape: Shape;
+	word: string;
+	/** Beside the word, in the same size: what is left, or the age of what is shown. */
+	beside: string;
+	/** null: there is no coil to count for. */
+	count: string | null;
+	/** The count is not of now: it is drawn as old, with a hatch. */
+	old: boolean;
+	name: string;
+	/** After the name: what it is to become. */
+	goal: string;
+	clock: string;
+	speed: string;
+	/** Next mark, or what to do to go on. */
+	ahead: string;
+	winder: string;
+	/** Remarks, most pressing first. */
+	messages: string[];
+	/** Below the word where there is no count, or a question in full. */
+	text: string | null;
+	taps: BenchTap[];
+	entry: CountEntry | null;
+	/** What the one key or pedal does now, and what holding it does. */
+	pedal: BenchTap | null;
+	pedalHeld: BenchTap | null;
+	/** Height of the winding, 0 to 1 of the target's height, above 1 when over. */
+	copper: number;
+	/** Look marks as parts of the target. */
+	marks: number[];
+	/** Read out politely and at once; change only with the state, never with the count. */
+	status: string;
+	alert: string;
+	sound: SoundNow;
+	/** The spindle is not known to turn: controls that are not taps may show. */
+	standing: boolean;
+	/** For the tab while another one is in front. */
+	title: string;
+	/** Digits the size of the count has to allow for. */
+	digits: number;
+}
+
+export interface PresentOptions {
+	timeZone: string;
+	/** How much later than usual the newest event came, in ms. */
+	delayMs: number;
+	/** Since anything came down the stream, in ms. */
+	silenceMs: number;
+	/** false: the stream is down and being rebuilt. */
+	streaming: boolean;
+	/** The page was hidden or the tablet slept; nothing has come since. */
+	unsure: boolean;
+	access: 'ok' | 'signed-out' | 'not-allowed' | 'gone';
+	/** Taps made here that the server has not answered. */
+	waitingTaps: readonly TapKind['kind'][];
+	/** Age of the oldest of them. */
+	waitingMs: number;
+	/** The plain reason a tap was refused, for a while. */
+	refusal: string | null;
+	asking: Asking;
+	/** The count being stepped or typed, null: not touched. */
+	entered: number | null;
+	/** Monotonic ms at which this screen first showed the run as kept. */
+	keptSeenAtMs: number | null;
+	/** Lines that had been missing have come, a moment ago. */
+	caughtUp: boolean;
+	sound: 'asleep' | 'ask' | 'on' | 'screen-only';
+	/** Cues that came while nobody could see or hear them. */
+	missed: readonly string[];
+}
+
+export const quietOptions: PresentOptions = {
+	timeZone: 'UTC',
+	delayMs: 0,
+	silenceMs: 0,
+	streaming: true,
+	unsure: false,
+	access: 'ok',
+	waitingTaps: [],
+	waitingMs: 0,
+	refusal: null,
+	asking: null,
+	entered: null,
+	keptSeenAtMs: null,
+	caughtUp: false,
+	sound: 'on',
+	missed: []
+};
+
+/** A double tap on "Keep this coil" must not land on Undo. */
+export const undoAfterMs = 1_000;
+/** Below this a tap on its way is no news. */
+const waitingShownAfterMs = 400;
+/** The server sends a beat every 2 s; what is later than this was held up. */
+const silenceShownAfterMs = 2_600;
+const delayShownAfterMs = 1_000;
+/** Most look marks drawn; more would run together. */
+const marksMax = 60;
+
+const noticeText: Record<Notice, string> = {
+	bouncing: 'sensor is bouncing',
+	'missed-pulses': 'possible missed turns',
+	'pulses-per-turn': 'two pulses a turn?',
+	'clock-odd': 'speed reading unreliable',
+	'two-winders': 'two winders share the name',
+	'line-errors': 'lines arrive damaged',
+	'wrong-way': 'turning the wrong way',
+	'catching-up': 'catching up'
+};
+
+/** "0:04 ago", "12:34 ago", "3 h ago": an age that fits beside a word. */
+export function ageText(ms: number): string {
+	return ms < 3_600_000 ? `${durationText(Math.floor(ms / 1000) * 1000)} ago` : `${Math.floor(ms / 3_600_000)} h ago`;
+}
+
+const tenths = (ms: number) => `${(Math.floor(ms / 100) / 10).toFixed(1)} s`;
+
+const hourMinute = (at: number, timeZone: string) => {
+	const { hour, minute } = wallTime(at, timeZone);
+	return `${String(hour).padStart(2, '0')}:${String(minute).padStart(2, '0')}`;
+};
+
+const tap = (label: string, size: BenchTap['size'], kind: TapKind): BenchTap => ({
+	key: kind.kind === 'look' ? `look-${kind.note}` : kind.kind === 'set-aside' ? `aside-${kind.reason}` : kind.kind,
+	label,
+	size,
+	act: { do: 'tap', tap: kind },
+	enabled: true
+});
+const ask = (label: string, size: BenchTap['size'], asking: Asking): BenchTap => ({
+	key: `ask-${asking ?? 'back'}`,
+	label,
+	size,
+	act: { do: 'ask', asking },
+	enabled: true
+});
+const go = (label: string, size: BenchTap['size'], href: string): BenchTap => ({
+	key: `go-${href}`,
+	label,
+	size,
+	act: { do: 'go', href },
+	enabled: true
+});
+
+const screenTap: BenchTap = { key: 'screen', label: 'Screen', size: 'small', act: { do: 'screen' }, enabled: true };
+const queueTap = go('Queue', 'small', '/wind');
+const snappedTap = tap('wire snapped', 'small', { kind: 'snapped' });
+const takingOffTap = tap('taking off', 'small', { kind: 'taking-off' });
+const keepAsIsTap = tap('Keep as it is', 'small', { kind: 'keep' });
+
+/** What the state of the run says by itself, before link, question and taps in waiting are looked at. */
+interface Face {
+	ground: Ground;
+	shape: Shape;
+	word: string;
+	beside: string;
+	ahead: string;
+	text: string | null;
+	taps: BenchTap[];
+	entry: CountEntry | null;
+	pedal: BenchTap | null;
+	pedalHeld: BenchTap | null;
+	status: string;
+	alert: string;
+}
+
+const face = (part: Partial<Face> & Pick<Face, 'ground' | 'shape' | 'word'>): Face => ({
+	beside: '',
+	ahead: '',
+	text: null,
+	taps: [],
+	entry: null,
+	pedal: null,
+	pedalHeld: null,
+	status: '',
+	alert: '',
+	...part
+});
+
+/**
+ * Everything the bench shows, from the newest state and how old it is.
+ *
+ * @param view the newest live state
+ * @param nowMs monotonic ms of the browser
+ * @param receivedAtMs monotonic ms at which the view came
+ */
+export function present(
+	view: LiveView,
+	nowMs: number,
+	receivedAtMs: number,
+	options: PresentOptions = quietOptions
+): BenchModel {
+	const sinceMs = Math.max(0, nowMs - receivedAtMs);
+	const ageMs = view.ageMs === null ? null : view.ageMs + options.delayMs + sinceMs;
+	const run = view.run;
+	const link = linkNow(view, ageMs, options.unsure);
+	const lost = link === 'no-signal' || link === 'never';
+	const old = lost || link === 'old';
+	// A spindle that was turning when the lines ended may have stopped since: its taps must be within reach then.
+	const turning = view.turning && !lost;
+	const counting = run !== null && run.startedAt !== null && run.state !== 'kept' && run.state !== 'set-aside';
+
+	let shown = faceOf(view, run, turning, view.turning && lost, nowMs, sinceMs, options);
+	if (counting && lost) {
+		const question = run.question !== null;
+		shown = {
+			...shown,
+			ground: 'no-signal',
+			shape: 'broken-line',
+			word: question ? shown.word : 'No signal',
+			beside: ageMs === null ? '' : ageText(ageMs),
+			status: question ? shown.status : 'No signal',
+			alert: ''
+		};
+	} else if (counting && old) {
+		shown = {
+			...shown,
+			ground: shown.ground === 'plain' ? 'no-signal' : shown.ground,
+			beside: ageMs === null ? shown.beside : `${tenths(ageMs)} ago`
+		};
+	}
+
+	shown = withAccess(withWaitingTaps(shown, run, options), options, turning);
+	if (!turning && options.access === 'ok') {
+		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first.
+		if (options.sound === 'ask' && run?.question == null) shown = { ...shown, ...soundQuestion };
+		shown = { ...shown, taps: [...shown.taps, screenTap] };
+	}
+
+	const messages = messagesOf(view, run, ageMs, link, turning, options);
+	const windingMs = run ? run.windingMs + (view.turning && link === 'live' ? sinceMs * view.timeScale : 0) : 0;
+	const count = run ? run.onBobbin : null;
+	return {
+		...shown,
+		count: count === null ? null : wholeText(count),
+		old: old && run !== null && run.state !== 'kept' && run.state !== 'set-aside' && run.startedAt !== null,
+		name: run?.coil.name ?? '',
+		goal: run ? turnsText(run.target) : '',
+		clock: run && run.startedAt !== null ? `winding ${durationText(Math.floor(windingMs / 1000) * 1000)}` : '',
+		speed: speedText(view, lost),
+		winder: view.winderName,
+		messages,
+		copper: run && run.target > 0 ? Math.max(0, run.onBobbin / run.target) : 0,
+		marks: run ? marksOf(run) : [],
+		sound: soundOf(view, run, link),
+		standing: !turning,
+		title: `${shown.word}${count === null ? '' : ` ${wholeText(count)}`} · ${view.winderName} · Turnstead`,
+		digits: run ? Math.max(String(run.target).length, String(Math.abs(run.onBobbin)).length, 4) : 4
+	};
+}
+
+function linkNow(view: LiveView, ageMs: number | null, unsure: boolean): LinkState {
+	const link = linkStateOf(ageMs, view.turning);
+	return unsure && link === 'live' ? 'old' : link;
+}
+
+function speedText(view: LiveView, lost: boolean): string {
+	if (lost) return '';
+	return view.turning ? `${wholeText(Math.abs(view.rpm))} rpm` : 'stopped';
+}
+
+const leftText = (run: RunView) => (run.left < 0 ? `${wholeText(-run.left)} over` : `${wholeText(run.left)} left`);
+
+/**
+ * @param turning known to turn now
+ * @param mayTurn was turning when the lines ended
+ */
+function faceOf(
+	view: LiveView,
+	run: RunView | null,
+	turning: boolean,
+	mayTurn: boolean,
+	nowMs: number,
+	sinceMs: number,
+	options: PresentOptions
+): Face {
+	if (run === null) {
+		return face({
+			ground: 'plain',
+			shape: 'bobbin-empty',
+			word: 'Waiting',
+			text: 'Nothing waiting to be wound',
+			taps: turning ? [] : [go('Put coils in the queue', 'main', '/wind')]
+		});
+	}
+	if (run.state === 'kept') return keptFace(view, run, turning, nowMs, sinceMs, options);
+	if (run.state === 'set-aside') {
+		return face({
+			ground: 'plain',
+			shape: 'tag-aside',
+			word: 'Set aside',
+			ahead: aheadNext(view),
+			text: run.setAsideReason,
+			taps: turning ? [] : [queueTap],
+			status: 'Set aside'
+		});
+	}
+	if (run.question !== null && run.questionDetail !== null) return questionFace(run, turning, options);
+	if (options.asking === 'set-aside' && !turning) return setAsideFace(run);
+	if (turning) return turningFace(run);
+	if (mayTurn) {
+		return face({
+			ground: 'plain',
+			shape: 'bobbin',
+			word: 'Winding',
+			beside: leftText(run),
+			taps: run.state === 'taking-off' ? [doneTakingOff('small')] : [keepAsIsTap, snappedTap],
+			pedalHeld: snappedTap
+		});
+	}
+	return standingFace(view, run);
+}
+
+function turningFace(run: RunView): Face {
+	const beside = leftText(run);
+	const wire = { taps: [snappedTap], pedalHeld: snappedTap };
+	if (run.state === 'taking-off') {
+		return face({ ground: 'plain', shape: 'bobbin-unwinding', word: 'Taking off', beside });
+	}
+	if (run.cue === 'over') return face({ ground: 'stop', shape: 'bar', word: 'Stop', beside, alert: 'Stop. Over.' });
+	if (run.cue === 'stop') return face({ ground: 'stop', shape: 'bar', word: 'Stop', beside, alert: 'Stop' });
+	if (run.state === 'easing' || run.cue === 'ease') {
+		const ahead = `stop at ${wholeText(run.target)}`;
+		return face({ ground: 'ease', shape: 'falling-bars', word: 'Ease off', beside, ahead, status: 'Ease off', ...wire });
+	}
+	if (run.cue === 'look') {
+		const at = run.nextLook ?? run.onBobbin;
+		const status = `Look at ${wholeText(at)}`;
+		return face({ ground: 'look', shape: 'eye', word: 'Look', beside, ahead: 'stop for a look', status, ...wire });
+	}
+	return face({ ground: 'plain', shape: 'bobbin', word: 'Winding', beside, ahead: aheadMark(run), ...wire });
+}
+
+function standingFace(view: LiveView, run: RunView): Face {
+	const beside = leftText(run);
+	switch (run.state) {
+		case 'waiting': {
+			const start = tap('Start this coil', 'main', { kind: 'start' });
+			return face({
+				ground: 'plain',
+				shape: 'bobbin-empty',
+				word: 'Waiting',
+				beside,
+				ahead: 'starts by turning, too',
+				taps: [start, queueTap],
+				pedal: start
+			});
+		}
+		case 'at-look': {
+			const even = tap('Looks even', 'main', { kind: 'look', note: 'even' });
+			return face({
+				ground: 'look',
+				shape: 'eye',
+				word: 'Look',
+				beside,
+				ahead: 'wind on to go on',
+				taps: [
+					even,
+					tap('high at one side', 'small', { kind: 'look', note: 'high-at-one-side' }),
+					tap('guided again', 'small', { kind: 'look', note: 'guided-again' })
+				],
+				pedal: even,
+				status: 'Look'
+			});
+		}
+		case 'on-count': {
+			const keep = tap('Keep this coil', 'main', { kind: 'keep' });
+			const word =
+				run.left === 0
+					? 'On the mark'
+					: run.left < 0
+						? `${wholeText(-run.left)} over`
+						: `${wholeText(run.left)} short`;
+			return face({
+				ground: 'mark',
+				shape: 'tick',
+				word,
+				ahead: aheadNext(view),
+				taps: [keep, snappedTap, takingOffTap],
+				pedal: keep,
+				status: word
+			});
+		}
+		case 'taking-off': {
+			const done = doneTakingOff('main');
+			return face({
+				ground: 'plain',
+				shape: 'bobbin-unwinding',
+				word: 'Taking off',
+				beside,
+				taps: [done],
+				pedal: done
+			});
+		}
+		default:
+			return restingFace(run);
+	}
+}
+
+const doneTakingOff = (size: BenchTap['size']) => tap('Done taking off', size, { kind: 'taking-off-done' });
+
+/** Standing with wire on the bobbin and no look due: paused, stopped short of the mark, or wound past it. */
+function restingFace(run: RunView): Face {
+	const moved = run.movedTurnsAgo !== null;
+	const over = run.left < 0;
+	const near = run.onBobbin >= run.easeAt;
+	// Just begun: nothing to keep yet, and the zero may still be put right.
+	const taps = moved
+		? [tap('Start here instead', 'small', { kind: 'start-here' }), snappedTap]
+		: run.onBobbin === 0
+			? [snappedTap]
+			: [keepAsIsTap, snappedTap];
+	return face({
+		ground: over ? 'stop' : 'plain',
+		shape: over ? 'bar' : 'bobbin-resting',
+		word: over ? `${wholeText(-run.left)} over` : near || run.onBobbin === 0 ? 'Stopped' : 'Paused',
+		beside: over ? '' : leftText(run),
+		ahead: over ? 'take turns off, or keep it' : run.onBobbin === 0 ? 'turn the spindle to begin' : 'wind on to go on',
+		taps: [...taps, takingOffTap, ask('Set aside', 'small', 'set-aside')],
+		status: over ? 'Over' : ''
+	});
+}
+
+function keptFace(
+	view: LiveView,
+	run: RunView,
+	turning: boolean,
+	nowMs: number,
+	sinceMs: number,
+	options: PresentOptions
+): Face {
+	const undoLeftMs = run.undoUntil === null ? 0 : run.undoUntil - (view.at + sinceMs);
+	const seenMs = options.keptSeenAtMs === null ? 0 : nowMs - options.keptSeenAtMs;
+	const undo: BenchTap = { ...tap('Undo', 'main', { kind: 'undo' }), enabled: seenMs >= undoAfterMs };
+	const mayUndo = undoLeftMs > 0 && !turning;
+	const start = run.startedAt;
+	const times =
+		start === null
+			? ''
+			: ` · start ${hourMinute(start, options.timeZone)} · finish ${hourMinute(
+					start + (run.windingMs + run.stoppedMs) / view.timeScale,
+					options.timeZone
+				)}`;
+	return face({
+		ground: 'mark',
+		shape: 'tag',
+		word: 'Kept',
+		beside: run.sticker ?? '',
+		ahead: aheadNext(view),
+		text: run.sticker === null ? null : `Copy on the coil: ${run.sticker} · ${turnsText(run.onBobbin)}${times}`,
+		taps: turning ? [] : mayUndo ? [undo, queueTap] : [queueTap],
+		pedal: mayUndo && undo.enabled ? undo : null,
+		status: 'Kept'
+	});
+}
+
+function setAsideFace(run: RunView): Face {
+	return face({
+		ground: 'plain',
+		shape: 'fork',
+		word: 'Set aside',
+		text: 'Why is this coil set aside?',
+		beside: leftText(run),
+		taps: [
+			...setAsideReasons.map((reason) => tap(reason, 'small', { kind: 'set-aside', reason })),
+			ask('Go back', 'small', null)
+		],
+		status: 'Why is this coil set aside?'
+	});
+}
+
+/** What the winder's sensor cannot know is asked, never guessed; a turning spindle is stopped first. */
+function questionFace(run: RunView, turning: boolean, options: PresentOptions): Face {
+	const detail = run.questionDetail!;
+	const asked = { ground: 'look' as const, shape: 'fork' as const };
+	let shown: Face;
+	switch (detail.kind) {
+		case 'jump':
+			shown = face({
+				...asked,
+				word: 'Count jumped',
+				text: `Count jumped – take ${wholeText(detail.take)} / keep ${wholeText(detail.keep)}`,
+				taps: [
+					tap(`Take ${wholeText(detail.take)}`, 'main', { kind: 'jump-take' }),
+					tap(`Keep ${wholeText(detail.keep)}`, 'main', { kind: 'jump-keep' })
+				]
+			});
+			break;
+		case 'restarted': {
+			const bound = detail.uncertainTurns;
+			const text =
+				bound === null
+					? `Winder restarted at ${wholeText(detail.at)} – what it turned meanwhile is not known`
+					: `Winder restarted at ${wholeText(detail.at)} – up to ${turnsText(bound)} uncertain`;
+			if (options.asking === 'true-count') {
+				shown = face({
+					...asked,
+					word: 'Restarted',
+					text: 'Type the count as you know it',
+					taps: [ask('Go back', 'small', null)],
+					entry: {
+						label: 'True count in turns',
+						value: options.entered ?? detail.at,
+						min: 0,
+						max: entryMax,
+						confirm: 'Use this count',
+						tap: 'true-count'
+					}
+				});
+			} else {
+				shown = face({
+					...asked,
+					word: 'Restarted',
+					text,
+					taps: [
+						tap(`Go on from ${wholeText(detail.at)}`, 'main', { kind: 'go-on' }),
+						ask('Type the count', 'main', 'true-count'),
+						tap('Set aside', 'main', { kind: 'set-aside', reason: 'winder restarted' })
+					]
+				});
+			}
+			break;
+		}
+		case 'did-you-stop':
+			shown = face({
+				...asked,
+				word: 'Did you stop?',
+				text: `Pulses ended at ${turnsText(detail.at)}, at ${wholeText(detail.rpm)} rpm: the sensor may have lost its magnet`,
+				taps: [
+					tap('Yes, I stopped', 'main', { kind: 'stopped' }),
+					tap('No, it turned on', 'main', { kind: 'not-stopped' })
+				]
+			});
+			break;
+		case 'which-winder':
+			shown = face({
+				...asked,
+				word: 'Which winder?',
+				text: `${detail.otherName} turned ${turnsText(detail.turns)} for this coil too. Where is it wound?`,
+				taps: [
+					tap('On this one', 'main', { kind: 'this-winder' }),
+					tap(`On ${detail.otherName}`, 'main', { kind: 'other-winder' })
+				]
+			});
+			break;
+		case 'snapped':
+			shown = face({
+				...asked,
+				word: 'Wire snapped',
+				text: `Wire left at turn … – counted ${wholeText(detail.counted)}`,
+				taps: [tap('The wire held', 'main', { kind: 'no-snap' })],
+				entry: {
+					label: 'Wire left at turn',
+					value: options.entered ?? detail.guess,
+					min: 0,
+					max: Math.max(0, detail.counted),
+					confirm: 'It left here',
+					tap: 'snap-at'
+				}
+			});
+			break;
+	}
+	if (turning) return { ...shown, taps: [], entry: null, ahead: 'stop the winder to answer', status: shown.word };
+	return { ...shown, status: shown.text ?? shown.word };
+}
+
+/** No coil has more turns than the longest target, twice over. */
+const entryMax = 200_000;
+
+/** A tap on its way, or one that waits for the winder's lines, is not offered again. */
+function withWaitingTaps(shown: Face, run: RunView | null, options: PresentOptions): Face {
+	const waiting = new Set<TapKind['kind']>(options.waitingTaps);
+	if (run?.pendingTap) waiting.add(run.pendingTap);
+	if (waiting.size === 0) return shown;
+	const off = (one: BenchTap | null) => (one?.act.do === 'tap' && waiting.has(one.act.tap.kind) ? null : one);
+	return {
+		...shown,
+		taps: shown.taps.map((one) => (off(one) ? one : { ...one, enabled: false })),
+		entry: shown.entry && waiting.has(shown.entry.tap) ? null : shown.entry,
+		pedal: off(shown.pedal),
+		pedalHeld: off(shown.pedalHeld)
+	};
+}
+
+function withAccess(shown: Face, options: PresentOptions, turning: boolean): Face {
+	if (options.access === 'ok') return shown;
+	const out = options.access === 'signed-out' && !turning;
+	return {
+		...shown,
+		taps: out ? [go('Sign in again', 'main', '/sign-in')] : [],
+		entry: null,
+		pedal: null,
+		pedalHeld: null,
+		ahead: ''
+	};
+}
+
+const soundQuestion = {
+	ahead: 'Did you hear it?',
+	taps: [
+		{ key: 'heard', label: 'Yes, I heard it', size: 'main', act: { do: 'heard', yes: true }, enabled: true },
+		{ key: 'unheard', label: 'No, screen only', size: 'main', act: { do: 'heard', yes: false }, enabled: true }
+	] satisfies BenchTap[],
+	entry: null,
+	pedal: null,
+	pedalHeld: null
+};
+
+function aheadMark(run: RunView): string {
+	if (run.nextLook !== null) return `look at ${wholeText(run.nextLook)}`;
+	return `ease off at ${wholeText(run.easeAt)}`;
+}
+
+function aheadNext(view: LiveView): string {
+	return view.next ? `next: ${view.next.name}, ${turnsText(view.next.target)}` : 'no coil waits after this one';
+}
+
+function messagesOf(
+	view: LiveView,
+	run: RunView | null,
+	ageMs: number | null,
+	link: LinkState,
+	turning: boolean,
+	options: PresentOptions
+): string[] {
+	const messages: string[] = [];
+	if (options.access === 'signed-out') messages.push('signed out: the winder goes on counting');
+	if (options.access === 'not-allowed') messages.push('you may not use this bench any more');
+	if (options.access === 'gone') messages.push('this winder is no longer here');
+	if (options.refusal !== null) messages.push(options.refusal);
+	if (!view.saving) messages.push('counting, not saving');
+	const unsaved = Math.max(options.waitingMs >= waitingShownAfterMs ? options.waitingTaps.length : 0, 0);
+	if (unsaved > 0) messages.push(`waiting to save (${unsaved})`);
+	if (run?.pendingTap) messages.push('waiting for the winder’s lines');
+
+	const lateMs = Math.max(
+		options.delayMs >= delayShownAfterMs ? options.delayMs : 0,
+		options.silenceMs >= silenceShownAfterMs ? options.silenceMs : 0
+	);
+	if (options.access === 'ok') {
+		if (!options.streaming) messages.push('no connection to the server');
+		else if (lateMs > 0) messages.push(`network is delaying data (${tenths(lateMs)})`);
+		else if (ageMs !== null && (link === 'old' || link === 'no-signal')) {
+			messages.push(`last line ${ageMs < 60_000 ? `${Math.floor(ageMs / 1000)} s` : ageText(ageMs).slice(0, -4)} ago: cable?`);
+		} else if (link === 'never') messages.push('this winder has not sent a line yet');
+	}
+	if (options.caughtUp) messages.push('caught up');
+	if (options.missed.length > 0) messages.push(`while the screen was off: ${options.missed.join(', ')}`);
+	if (run && run.state !== 'kept' && run.state !== 'set-aside') {
+		if (run.movedTurnsAgo !== null) {
+			messages.push(`counting since it moved, ${turnsText(run.movedTurnsAgo)} ago`);
+		}
+		if (run.takenBack > 0 && (run.state === 'taking-off' || view.rpm <= 0)) {
+			messages.push(`${wholeText(run.takenBack)} taken back`);
+		}
+		const emptyTurns = run.turns - run.onBobbin;
+		if (emptyTurns > 0 && run.snaps.length > 0) messages.push(`counted ${wholeText(run.turns)}, ${wholeText(emptyTurns)} empty`);
+	}
+	for (const notice of view.notices) messages.push(noticeText[notice]);
+	if (!turning && options.sound === 'asleep') messages.push('sound is off – tap');
+	if (view.last && run?.state === 'waiting') {
+		messages.push(
+			view.last.state === 'kept'
+				? `copy on the last coil: ${view.last.sticker} · ${turnsText(view.last.onBobbin)}`
+				: `last coil set aside at ${turnsText(view.last.onBobbin)}`
+		);
+	}
+	return messages;
+}
+
+/** Every look of the coil as a part of its target. */
+function marksOf(run: RunView): number[] {
+	const marks: number[] = [];
+	if (run.firstLook > 0 && run.firstLook < run.target) marks.push(run.firstLook / run.target);
+	const every = run.coil.lookEvery;
+	if (every > 0 && run.target / every <= marksMax) {
+		for (let at = every; at < run.target; at += every) if (at !== run.firstLook) marks.push(at / run.target);
+	}
+	return marks;
+}
+
+/** Only what is so now sounds: not an old number, not a replay, not a coil that is done. */
+function soundOf(view: LiveView, run: RunView | null, link: LinkState): SoundNow {
+	const quiet: SoundNow = { cue: 'quiet', key: 'quiet', nearness: 0, over: 0 };
+	if (run === null || run.startedAt === null || run.state === 'kept' || run.state === 'set-aside') return quiet;
+	// A winder that stood still when its lines ended has nothing to warn of.
+	if (link === 'no-signal') return view.turning ? { ...quiet, cue: 'no-signal', key: `${run.runId} no-signal` } : quiet;
+	if (link !== 'live' || view.notices.includes('catching-up') || !view.turning || run.question !== null) return quiet;
+	if (run.state === 'taking-off' || run.cue === null) return quiet;
+	const span = Math.max(1, run.stopAt - run.easeAt);
+	return {
+		cue: run.cue,
+		key: `${run.runId} ${run.cue} ${run.cue === 'look' || run.cue === 'look-coming' ? run.nextLook : run.target}`,
+		nearness: Math.min(1, Math.max(0, (run.onBobbin - run.easeAt) / span)),
+		over: Math.max(0, -run.left)
+	};
+}
+
+/**
+ * Cues that lie between two states of one run and were not heard, in the order they came.
+ */
+export function missedCues(before: RunView | null, after: RunView | null): string[] {
+	if (before === null || after === null || before.runId !== after.runId) return [];
+	const passed = (mark: number) => before.onBobbin < mark && after.onBobbin >= mark;
+	const missed: { at: number; text: string }[] = [];
+	const every = after.coil.lookEvery;
+	if (every > 0) {
+		for (let at = (Math.floor(before.onBobbin / every) + 1) * every; at <= after.onBobbin; at += every) {
+			if (at < after.easeAt) missed.push({ at, text: `look at ${wholeText(at)}` });
+		}
+	}
+	const first = after.firstLook;
+	if (first > 0 && passed(first) && (every === 0 || first % every !== 0)) {
+		missed.push({ at: first, text: `look at ${wholeText(first)}` });
+	}
+	if (passed(after.easeAt)) missed.push({ at: after.easeAt, text: 'ease off' });
+	if (passed(after.stopAt)) missed.push({ at: after.stopAt, text: 'stop' });
+	return missed.sort((a, b) => a.at - b.at).map(({ text }) => text);
+}
