@@ -1,6 +1,6 @@
 import { sql, type Kysely } from 'kysely';
 import { connect } from './connect.ts';
-import type { Database } from './schema.ts';
+import type { Database, Role } from './schema.ts';
 
 /** What only the operator's commands do: they sign in as the owner, whom the policies do not bind. */
 
@@ -30,4 +30,70 @@ export async function createDatabase(db: Kysely<Database>, name: string, templat
 /** Drops a database with everybody in it. Nothing happens when there is none of that name. */
 export async function dropDatabase(db: Kysely<Database>, name: string): Promise<void> {
 	await sql`drop database if exists ${sql.id(name)} with (force)`.execute(db);
+}
+
+export async function anyWorkshop(db: Kysely<Database>): Promise<boolean> {
+	return (await db.selectFrom('workshop').select('id').limit(1).executeTakeFirst()) !== undefined;
+}
+
+export interface WorkshopInput {
+	/** Lower-case letters, digits and hyphens, beginning with a letter. */
+	shortName: string;
+	name: string;
+	/** IANA name, such as Europe/Berlin. */
+	timeZone: string;
+}
+
+/** Its id. Throws where the short name is taken or a field does not fit; the command checks first. */
+export async function insertWorkshop(db: Kysely<Database>, workshop: WorkshopInput): Promise<string> {
+	const row = await db
+		.insertInto('workshop')
+		.values({ short_name: workshop.shortName, name: workshop.name, time_zone: workshop.timeZone })
+		.returning('id')
+		.executeTakeFirstOrThrow();
+	return row.id;
+}
+
+export interface WorkshopRow {
+	id: string;
+	shortName: string;
+	name: string;
+	timeZone: string;
+}
+
+export async function findWorkshop(db: Kysely<Database>, shortName: string): Promise<WorkshopRow | null> {
+	return (await listWorkshops(db)).find((workshop) => workshop.shortName === shortName) ?? null;
+}
+
+export async function listWorkshops(db: Kysely<Database>): Promise<WorkshopRow[]> {
+	return db
+		.selectFrom('workshop')
+		.select(['id', 'short_name as shortName', 'name', 'time_zone as timeZone'])
+		.orderBy('short_name')
+		.execute();
+}
+
+/** A person who can sign in at once. Their id. */
+export async function insertMemberWithPassword(
+	db: Kysely<Database>,
+	workshopId: string,
+	person: { name: string; email: string; role: Role; passwordHash: string }
+): Promise<string> {
+	const row = await db
+		.insertInto('member')
+		.values({
+			workshop_id: workshopId,
+			email: person.email,
+			name: person.name,
+			role: person.role,
+			password_hash: person.passwordHash
+		})
+		.returning('id')
+		.executeTakeFirstOrThrow();
+	return row.id;
+}
+
+/** Throws when the database does not answer. */
+export async function ping(db: Kysely<Database>): Promise<void> {
+	await sql`select 1`.execute(db);
 }

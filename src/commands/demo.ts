@@ -1,0 +1,100 @@
+import { randomInt } from 'node:crypto';
+import type { Kysely } from 'kysely';
+import { hashPassword } from '../lib/server/auth/passwords.ts';
+import { anyWorkshop, insertMemberWithPassword, insertWorkshop } from '../lib/server/db/admin.ts';
+import { addCoil, type CoilInput } from '../lib/server/db/coils.ts';
+import type { Database, Role } from '../lib/server/db/schema.ts';
+import { addWinder, newLinkKey } from '../lib/server/db/winders.ts';
+import { readData, writeData } from './data-folder.ts';
+
+/** An invented workshop for the first look at an empty database: three people, one simulated winder, three coils. */
+
+const SIGN_INS = 'demo-sign-ins.txt';
+const WINDER = 'demo-winder.json';
+
+const people: { name: string; email: string; role: Role }[] = [
+	{ name: 'Ada Quill', email: 'ada@demo.example', role: 'owner' },
+	{ name: 'Tom Fenn', email: 'tom@demo.example', role: 'maker' },
+	{ name: 'Ira Moss', email: 'ira@demo.example', role: 'apprentice' }
+];
+
+const common = {
+	note: '',
+	lookEvery: 500,
+	direction: 'counter-clockwise',
+	topFaces: 'out',
+	toleranceTurns: 5
+} as const;
+
+// The first is short, so that whoever watches sees the looks and the end within minutes.
+const coils: CoilInput[] = [
+	{ ...common, name: 'Practice coil', target: 1200, note: 'To see how the bench works.' },
+	{ ...common, name: 'Bridge · screw coil', target: 5320 },
+	{ ...common, name: 'Bridge · slug coil', target: 5320, direction: 'clockwise' }
+];
+
+export interface DemoWinder {
+	id: string;
+	name: string;
+	linkKey: string;
+}
+
+/** The sign-ins as they are shown and kept, or null where there is no demo workshop. */
+export function demoSignIns(): string | null {
+	return readData(SIGN_INS);
+}
+
+/** The winder the simulator plays, or null where there is no demo workshop. */
+export function demoWinder(): DemoWinder | null {
+	const text = readData(WINDER);
+	return text === null ? null : (JSON.parse(text) as DemoWinder);
+}
+
+/** Makes the demo workshop on a database without any workshop. `db` signs in as the owner. */
+export async function ensureDemo(db: Kysely<Database>): Promise<'made' | 'not-needed'> {
+	if (await anyWorkshop(db)) return 'not-needed';
+	const signIns = await Promise.all(
+		people.map(async (person) => {
+			const password = newPassword();
+			return { ...person, password, passwordHash: await hashPassword(password) };
+		})
+	);
+	// All of it or nothing, the files included: a database with a demo nobody has the passwords of is of no use.
+	await db.transaction().execute(async (trx) => {
+		const workshopId = await insertWorkshop(trx, {
+			shortName: 'demo',
+			name: 'Hollow Lane workshop',
+			timeZone: Intl.DateTimeFormat().resolvedOptions().timeZone
+		});
+		const memberIds: string[] = [];
+		for (const person of signIns) memberIds.push(await insertMemberWithPassword(trx, workshopId, person));
+		const added = await addWinder(trx, workshopId, {
+			name: 'w-01',
+			pulsesPerTurn: 1,
+			rpmMax: 2000,
+			seesDirection: true,
+			forwardIs: 'counter-clockwise',
+			easeEarlyTurns: 40,
+			stopEarlyTurns: 3,
+			keepAfterS: null,
+			timeScale: 1
+		});
+		if (!added.ok) throw new Error('a new workshop has a winder already');
+		const linkKey = await newLinkKey(trx, workshopId, added.winder.id);
+		if (linkKey === null) throw new Error('the winder just added is not there');
+		for (const coil of coils) await addCoil(trx, workshopId, coil, { createdBy: memberIds[0] ?? null });
+		const winder: DemoWinder = { id: added.winder.id, name: added.winder.name, linkKey };
+		writeData(WINDER, `${JSON.stringify(winder)}\n`);
+		writeData(SIGN_INS, signIns.map((one) => `${one.role.padEnd(10)}  ${one.email}  ${one.password}\n`).join(''));
+	});
+	return 'made';
+}
+
+// Without what looks like another letter: these are typed from one screen into another.
+const LETTERS = 'abcdefghjkmnpqrstuvwxyz23456789';
+
+/** Four groups of five: 31^20 is 99 bits. */
+export function newPassword(): string {
+	const group = () => Array.from({ length: 5 }, () => LETTERS[randomInt(LETTERS.length)]).join('');
+	return [group(), group(), group(), group()].join('-');
+}
