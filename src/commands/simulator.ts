@@ -18,7 +18,9 @@ export function startSimulator(url: string, winder: DemoWinder, onEnd: (code: nu
 	const main = join(projectFolder, 'simulator', 'main.ts');
 	const args = ['--import', 'tsx', main, '--server', url, '--winder', winder.id, '--scenario', 'workshop'];
 	// A certificate for the name of the shop is not one for 127.0.0.1, and this child speaks to nobody but this process.
-	const trust: Record<string, string> = url.startsWith('https:') ? { NODE_TLS_REJECT_UNAUTHORIZED: '0', NODE_NO_WARNINGS: '1' } : {};
+	const trust: Record<string, string> = url.startsWith('https:')
+		? { NODE_TLS_REJECT_UNAUTHORIZED: '0', NODE_NO_WARNINGS: '1' }
+		: {};
 	const child: ChildProcess = spawn(process.execPath, args, {
 		cwd: projectFolder,
 		stdio: ['ignore', 'ignore', 'inherit'],
