@@ -1,5 +1,4 @@
-import type { Kysely } from 'kysely';
-import type { Database } from '$lib/server/db/schema.ts';
+import type { Db } from '$lib/server/db/schema.ts';
 import type { Member } from '$lib/server/db/people.ts';
 import type { Session } from '@auth/sveltekit';
 
@@ -9,7 +8,7 @@ declare global {
 			/** Who is signed in, as the database knew them when the request came; null: nobody. */
 			member: Member | null;
 			/** The pool as turnstead_app; scoped work goes through inWorkshop. */
-			db: Kysely<Database>;
+			db: Db;
 			/** Auth.js's own; use `member`. */
 			auth: () => Promise<Session | null>;
 		}

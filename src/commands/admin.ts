@@ -1,5 +1,4 @@
 import { parseArgs, type ParseArgsConfig } from 'node:util';
-import type { Kysely } from 'kysely';
 import { z } from 'zod';
 import { hashPassword, passwordRefusals, refusePassword } from '../lib/server/auth/passwords.ts';
 import { newToken } from '../lib/server/auth/tokens.ts';
@@ -7,7 +6,7 @@ import { findWorkshop, insertWorkshop, listWorkshops, type WorkshopRow } from '.
 import { inWorkshop } from '../lib/server/db/connect.ts';
 import { migrationState } from '../lib/server/db/migrate.ts';
 import { addPerson, findSignIn, listPeople, passwordLinkDays, setPassword } from '../lib/server/db/people.ts';
-import type { Database } from '../lib/server/db/schema.ts';
+import type { Db } from '../lib/server/db/schema.ts';
 import { addWinder, listWinders, newLinkKey, winderLimits } from '../lib/server/db/winders.ts';
 import { startEnv } from '../lib/server/env.ts';
 import { projectDatabaseUrl } from './cluster.ts';
@@ -29,7 +28,7 @@ interface Verb {
 	options: Options;
 	/** One line for each option, in the order of the help. */
 	help: [string, string][];
-	work(db: Kysely<Database>, given: Given): Promise<void>;
+	work(db: Db, given: Given): Promise<void>;
 }
 
 const json: [string, string] = ['--json', 'print one line of JSON and nothing else'];
@@ -122,7 +121,7 @@ const verbs: Record<string, Verb> = {
 	}
 };
 
-async function addWorkshop(db: Kysely<Database>, given: Given): Promise<void> {
+async function addWorkshop(db: Db, given: Given): Promise<void> {
 	const input = check(given, {
 		'short-name': z
 			.string()
@@ -144,7 +143,7 @@ async function addWorkshop(db: Kysely<Database>, given: Given): Promise<void> {
 	]);
 }
 
-async function addOnePerson(db: Kysely<Database>, given: Given): Promise<void> {
+async function addOnePerson(db: Db, given: Given): Promise<void> {
 	const input = check(given, {
 		workshop: z.string(),
 		email: z.email('an address such as ada@workshop.example').max(254),
@@ -171,7 +170,7 @@ async function addOnePerson(db: Kysely<Database>, given: Given): Promise<void> {
 	]);
 }
 
-async function setOnePassword(db: Kysely<Database>, given: Given): Promise<void> {
+async function setOnePassword(db: Db, given: Given): Promise<void> {
 	const { email } = check(given, { email: z.string() });
 	const person = await findSignIn(db, email);
 	if (person === null) throw new PlainError(`Nobody signs in as ${email}. Nothing was changed.`);
@@ -182,7 +181,7 @@ async function setOnePassword(db: Kysely<Database>, given: Given): Promise<void>
 	]);
 }
 
-async function addOneWinder(db: Kysely<Database>, given: Given): Promise<void> {
+async function addOneWinder(db: Db, given: Given): Promise<void> {
 	const input = check(given, {
 		workshop: z.string(),
 		name: text(winderLimits.nameMax),
@@ -220,7 +219,7 @@ async function addOneWinder(db: Kysely<Database>, given: Given): Promise<void> {
 	]);
 }
 
-async function list(db: Kysely<Database>, given: Given): Promise<void> {
+async function list(db: Db, given: Given): Promise<void> {
 	if (typeof given.workshop !== 'string') {
 		const workshops = await listWorkshops(db);
 		say(given, workshops, [
@@ -274,7 +273,7 @@ function check<T extends z.ZodRawShape>(given: Given, shape: T): z.output<z.ZodO
 	throw new PlainError(`${[...new Set(sentences)].join('\n')}\nNothing was changed. --help shows what belongs here.`);
 }
 
-async function workshopOrSay(db: Kysely<Database>, shortName: string): Promise<WorkshopRow> {
+async function workshopOrSay(db: Db, shortName: string): Promise<WorkshopRow> {
 	const found = await findWorkshop(db, shortName);
 	if (found !== null) return found;
 	const names = (await listWorkshops(db)).map((workshop) => workshop.shortName);

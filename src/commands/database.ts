@@ -1,12 +1,11 @@
-import type { Kysely } from 'kysely';
 import { ping } from '../lib/server/db/admin.ts';
 import { connect } from '../lib/server/db/connect.ts';
 import { migrate } from '../lib/server/db/migrate.ts';
-import type { Database } from '../lib/server/db/schema.ts';
+import type { Db } from '../lib/server/db/schema.ts';
 import { PlainError, codeOf } from './plain-error.ts';
 
 /** Connects as the owner of the tables, works, and ends the connection. What goes wrong comes as a PlainError. */
-export async function asOwner<T>(url: string, work: (db: Kysely<Database>) => Promise<T>): Promise<T> {
+export async function asOwner<T>(url: string, work: (db: Db) => Promise<T>): Promise<T> {
 	const db = connect(url, { max: 2, onLost: () => {} });
 	try {
 		await ping(db);
@@ -24,7 +23,7 @@ export async function asOwner<T>(url: string, work: (db: Kysely<Database>) => Pr
 }
 
 /** The names of the migrations it ran. Throws PlainError when the database cannot be brought to this code. */
-export async function migrateOrSay(db: Kysely<Database>): Promise<string[]> {
+export async function migrateOrSay(db: Db): Promise<string[]> {
 	const migrated = await migrate(db);
 	if (!migrated.ok) throw new PlainError(migrated.why);
 	return migrated.done;

@@ -1,9 +1,8 @@
 import { randomInt } from 'node:crypto';
-import type { Kysely } from 'kysely';
 import { hashPassword } from '../lib/server/auth/passwords.ts';
 import { anyWorkshop, insertMemberWithPassword, insertWorkshop } from '../lib/server/db/admin.ts';
 import { addCoil, type CoilInput } from '../lib/server/db/coils.ts';
-import type { Database, Role } from '../lib/server/db/schema.ts';
+import type { Db, Role } from '../lib/server/db/schema.ts';
 import { addWinder, newLinkKey } from '../lib/server/db/winders.ts';
 import { readData, writeData } from './data-folder.ts';
 
@@ -51,7 +50,7 @@ export function demoWinder(): DemoWinder | null {
 }
 
 /** Makes the demo workshop on a database without any workshop. `db` signs in as the owner. */
-export async function ensureDemo(db: Kysely<Database>): Promise<'made' | 'not-needed'> {
+export async function ensureDemo(db: Db): Promise<'made' | 'not-needed'> {
 	if (await anyWorkshop(db)) return 'not-needed';
 	const signIns = await Promise.all(
 		people.map(async (person) => {

@@ -1,4 +1,4 @@
-import type { ColumnType, Generated, JSONColumnType } from 'kysely';
+import type { ColumnType, Generated, JSONColumnType, Kysely } from 'kysely';
 import type { Direction, Look, Snap, TopFaces } from '../../winding/types.ts';
 
 /** The tables as migrations/ leave them. bigint columns are read as numbers (all stay below 2^53); see connect.ts. */
@@ -177,3 +177,6 @@ export interface Database {
 	winder_state: WinderStateTable;
 	fact: FactTable;
 }
+
+/** A handle on the database, for those who pass it on and never write a query themselves. */
+export type Db = Kysely<Database>;
