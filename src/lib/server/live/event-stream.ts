@@ -8,6 +8,8 @@ const encoder = new TextEncoder();
 // One winder may have many screens: its view is written out once.
 const frames = new WeakMap<LiveView, Uint8Array>();
 
+const beatFrame = () => `event: beat\ndata: ${JSON.stringify({ at: Date.now() })}\n\n`;
+
 function frameOf(view: LiveView): Uint8Array {
 	let frame = frames.get(view);
 	if (!frame) {
@@ -29,13 +31,14 @@ export function liveEventStream(hub: LiveHub, workshopId: string, winderId: stri
 			async pull(controller) {
 				if (first) {
 					first = false;
-					controller.enqueue(encoder.encode(`retry: ${retryMs}\n\n`));
+					// A beat first: the latest view may be long made, and by the beat's time a screen knows how long.
+					controller.enqueue(encoder.encode(`retry: ${retryMs}\n\n${beatFrame()}`));
 					return;
 				}
 				const watched = await watcher.next();
 				if (watched.kind === 'ended') controller.close();
 				else if (watched.kind === 'live') controller.enqueue(frameOf(watched.view));
-				else controller.enqueue(encoder.encode(`event: beat\ndata: ${JSON.stringify({ at: Date.now() })}\n\n`));
+				else controller.enqueue(encoder.encode(beatFrame()));
 			},
 			cancel() {
 				watcher.end();
