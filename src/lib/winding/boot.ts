@@ -1,5 +1,3 @@
-import type { EventKind } from '../turnline/types.ts';
-
 /**
  * One boot of a winder as its lines tell it: the greatest totals, which lines and events have come, and how its clock lies
  * to ours. Nothing here knows of runs.
@@ -12,7 +10,7 @@ export interface Point {
 	v: number;
 	/** Signed rpm. */
 	r: number;
-	k: EventKind | null;
+	k: string | null;
 	/** Events so far at that moment. */
 	e: number;
 }

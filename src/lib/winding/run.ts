@@ -211,6 +211,8 @@ export function stateOf(run: RunCore, config: WinderConfig, onBobbin: number, tu
 	if (run.takingOff) return 'taking-off';
 	const cues = cuesOf(run, config, onBobbin, turning);
 	if (turning) return onBobbin >= cues.easeAt ? 'easing' : 'winding';
+	// Started with a tap and not yet moved: the maker is about to wind.
+	if (run.moves.length === 0) return 'winding';
 	if (Math.abs(cues.left) <= run.plan.toleranceTurns) return 'on-count';
 	if (run.look && !run.look.answered) return 'at-look';
 	return 'paused';

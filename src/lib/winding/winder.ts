@@ -1,4 +1,4 @@
-import type { DeviceLine, Event, EventKind, Hi, HostLine, SetPlan, Tick } from '../turnline/types.ts';
+import type { DeviceLine, Event, Hi, HostLine, SetPlan, Tick } from '../turnline/types.ts';
 import {
 	addEvent,
 	addLine,
@@ -93,7 +93,7 @@ export interface KeptLine {
 	b: string;
 	n: number;
 	e: number;
-	k: EventKind | null;
+	k: string | null;
 	f: number;
 	v: number;
 	r: number | null;
@@ -385,9 +385,10 @@ function maybeBridge(d: Draft, boot: BootState, line: Hi): void {
 /** Two boards of one name: lines of an older boot go on in step with the wall clock after another took over. */
 function watchForTwins(d: Draft, boot: BootState, t: number, receivedAt: number): void {
 	const current = d.s.boots[0]!;
-	const onTime = receivedAt - t / d.config.timeScale <= boot.birthAt + 2_000;
+	// One board cannot have made this line after its next boot was born; a spool replays only what was made before.
+	const madeAfter = boot.birthAt + t / d.config.timeScale > current.birthAt + 500;
 	const otherLives = receivedAt - current.lastAt < 3_000;
-	if (boot.alive < 0 || t <= boot.t || !onTime || !otherLives) return;
+	if (boot.alive < 0 || t <= boot.t || !madeAfter || !otherLives) return;
 	boot.alive += 1;
 	if (boot.alive < 2) return;
 	// The one that was here first keeps the run; the other is heard but not counted.
@@ -636,7 +637,7 @@ function follow(d: Draft, boot: BootState, point: Point, wasTurning: boolean, de
 	const at = wallAt(boot, point.t, config.timeScale);
 	const axis = axisAt(boot, point.t, config.timeScale);
 
-	if (s.upNext && s.upNext.pending === null && turnsOf(s.upNext, s.boots) >= 1) promote(d);
+	if (s.upNext && s.run?.status !== 'open' && turnsOf(s.upNext, s.boots) >= 1) promote(d);
 	const run = s.run;
 	if (!run || run.status !== 'open') {
 		if (s.end && boot.turning !== wasTurning)
@@ -647,6 +648,7 @@ function follow(d: Draft, boot: BootState, point: Point, wasTurning: boolean, de
 	// While a keep waits for lines, what comes may belong to the next coil: only its moves are noted.
 	const ending = run.pending !== null && (run.pending.tap.kind === 'keep' || run.pending.tap.kind === 'set-aside');
 
+	const hadBegun = run.moves.length > 0;
 	if (run.startedAt === null) begin(d, run, boot, point, at);
 	if (run.startedAt === null) return;
 
@@ -654,10 +656,8 @@ function follow(d: Draft, boot: BootState, point: Point, wasTurning: boolean, de
 	const went = boot.turning && !wasTurning;
 	const stood = !boot.turning && wasTurning;
 	if (went) {
-		if (run.moves.length > 0) {
-			addMove(run, axis, 1);
-			if (!ending) say(d, 'went-on', at);
-		}
+		addMove(run, axis, 1);
+		if (hadBegun && !ending) say(d, 'went-on', at);
 		run.standingSince = null;
 		if (run.question === 'did-you-stop') clearQuestion(run);
 	}
@@ -665,7 +665,7 @@ function follow(d: Draft, boot: BootState, point: Point, wasTurning: boolean, de
 		addMove(run, axis, 0);
 		run.standingSince = axis;
 	}
-	if (run.moves.length === 0) addMove(run, run.startAxis ?? axis, 1);
+	if (run.moves.length === 0 && boot.turning) addMove(run, run.startAxis ?? axis, 1);
 	if (!boot.turning && run.standingSince === null) run.standingSince = axis;
 	if (ending) return;
 
