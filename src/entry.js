@@ -59,12 +59,12 @@ export async function serve(settings) {
 		res.setHeader('referrer-policy', 'same-origin');
 		if (stopping) {
 			res.setHeader('retry-after', '2');
-			return refuse(res, 503, 'Turnstead is stopping. Nothing of this request was taken; send it again.');
+			return refuse(req, res, 503, 'Turnstead is stopping. Nothing of this request was taken; send it again.');
 		}
 		const why = refusedHost(req.headers.host, ours);
-		if (why !== null) return refuse(res, why.status, why.text);
+		if (why !== null) return refuse(req, res, why.status, why.text);
 		nameProtocol(req, secure, settings.trustProxy ?? false);
-		handler(req, res, () => refuse(res, 404, 'There is nothing here.'));
+		handler(req, res, () => refuse(req, res, 404, 'There is nothing here.'));
 	};
 
 	const server = secure
@@ -182,11 +182,19 @@ function refusedHost(header, ours) {
 	};
 }
 
-/** @param {http.ServerResponse} res @param {number} status @param {string} text */
-function refuse(res, status, text) {
+/**
+ * Plain text, and to programs a problem (RFC 9457) like every refusal of the API.
+ * @param {http.IncomingMessage} req @param {http.ServerResponse} res @param {number} status @param {string} text
+ */
+function refuse(req, res, status, text) {
 	if (res.headersSent) return void res.end();
-	res.writeHead(status, { 'content-type': 'text/plain; charset=utf-8', connection: 'close' });
-	res.end(`${text}\n`);
+	const api = req.url?.startsWith('/api/') ?? false;
+	const problem = { type: 'about:blank', title: http.STATUS_CODES[status], status, detail: text };
+	res.writeHead(status, {
+		'content-type': api ? 'application/problem+json' : 'text/plain; charset=utf-8',
+		connection: 'close'
+	});
+	res.end(api ? JSON.stringify(problem) : `${text}\n`);
 }
 
 /** @param {http.Server | https.Server} server @param {Settings} settings @returns {Promise<void>} */

@@ -38,13 +38,20 @@ export async function ensureBuilt(signal?: AbortSignal): Promise<'built' | 'kept
 	return 'built';
 }
 
+/** Whether there is a build of these sources. */
+export function isBuilt(hash = sourcesHash()): boolean {
+	return (
+		existsSync(join(projectFolder, 'build', 'handler.js')) && existsSync(MARK) && readFileSync(MARK, 'utf8') === hash
+	);
+}
+
 /** Everything the build is made from: sources, static files, configuration, package versions and the Node that runs it. */
 function sourcesHash(): string {
 	const hash = createHash('sha256').update(process.version);
 	const single = ['package-lock.json', 'svelte.config.js', 'vite.config.ts', 'tsconfig.json'];
 	const files = [
 		...single,
-		...filesBelow('src').filter((file) => !file.startsWith('src/commands/') && !/\.test\.ts$/.test(file)),
+		...filesBelow('src').filter((file) => !beside(file)),
 		...filesBelow('static'),
 		...filesBelow('migrations')
 	];
@@ -53,6 +60,11 @@ function sourcesHash(): string {
 		hash.update(`\0${file}\0${content.length}\0`).update(content);
 	}
 	return hash.digest('hex');
+}
+
+/** Sources that run beside the build, not in it. */
+function beside(file: string): boolean {
+	return file === 'src/entry.js' || file.startsWith('src/commands/') || file.endsWith('.test.ts');
 }
 
 function filesBelow(folder: string): string[] {

@@ -6,7 +6,7 @@ import { createSecureContext } from 'node:tls';
 import { parseArgs } from 'node:util';
 import { serve, urlOf } from '../entry.js';
 import { provideServerEnv, startEnv, type StartEnv } from '../lib/server/env.ts';
-import { ensureBuilt } from './build.ts';
+import { ensureBuilt, isBuilt } from './build.ts';
 import { projectCluster, type Cluster } from './cluster.ts';
 import { authSecret, ensureDataFolder, leavePlace, notePlace, projectFolder, takePlace } from './data-folder.ts';
 import { asOwner, migrateOrSay } from './database.ts';
@@ -71,7 +71,6 @@ function onSignal(): void {
 }
 
 async function start(dev: boolean): Promise<void> {
-	const began = performance.now();
 	const settings = startEnv();
 	const url = urlOf(settings.host, settings.port, settings.tlsCert !== null);
 	checkTls(settings);
@@ -84,6 +83,7 @@ async function start(dev: boolean): Promise<void> {
 	if (!ignoresHangup()) process.on('SIGHUP', onSignal);
 	await checkPort(settings);
 
+	if (!dev && !isBuilt()) console.log('Building; this takes half a minute the first time …');
 	const notes: string[] = [];
 	// Building takes the longest and needs no database. Vite's reader is one more process; it ends by itself.
 	const noMore = new AbortController();
@@ -109,7 +109,7 @@ async function start(dev: boolean): Promise<void> {
 	const simulator = settings.simulator ? playWinder(url) : null;
 	notePlace({ url, stopping: false, simulator: simulator && { pid: simulator.pid, ticks: startTicks(simulator.pid) } });
 	if (simulator !== null) notes.push('winder      w-01, simulated (SIMULATOR=off in a shop that has one)');
-	announce(settings, notes, performance.now() - began);
+	announce(settings, notes, process.uptime());
 }
 
 async function startDatabase(notes: string[]): Promise<string> {
@@ -285,11 +285,11 @@ function playWinder(url: string): Simulator | null {
 	return simulator;
 }
 
-function announce(settings: StartEnv, notes: string[], tookMs: number): void {
+function announce(settings: StartEnv, notes: string[], tookS: number): void {
 	const secure = settings.tlsCert !== null;
 	const lines = [
 		'',
-		`Turnstead is ready after ${(tookMs / 1000).toFixed(1)} s.`,
+		`Turnstead is ready after ${tookS.toFixed(1)} s.`,
 		'',
 		...addresses(settings.host).map((host) => `  ${urlOf(host, settings.port, secure)}`),
 		'',

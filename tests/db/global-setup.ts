@@ -1,7 +1,5 @@
 import type { TestProject } from 'vitest/node';
-import { throwawayCluster } from '../../src/commands/cluster.ts';
-import { testEnv } from '../../src/lib/server/env.ts';
-import { dropTemplate, makeTemplate } from './harness.ts';
+import { testCluster } from './harness.ts';
 
 declare module 'vitest' {
 	export interface ProvidedContext {
@@ -13,14 +11,8 @@ declare module 'vitest' {
 }
 
 export default async function setup(project: TestProject): Promise<() => Promise<void>> {
-	const given = testEnv().databaseUrl;
-	const own = given === null ? await throwawayCluster() : null;
-	const url = given ?? own?.url ?? '';
-	const template = await makeTemplate(url);
+	const { url, template, remove } = await testCluster();
 	project.provide('clusterUrl', url);
 	project.provide('template', template);
-	return async () => {
-		if (own === null) await dropTemplate(url, template);
-		else await own.remove();
-	};
+	return remove;
 }

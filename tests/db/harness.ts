@@ -1,9 +1,11 @@
 import { randomBytes } from 'node:crypto';
 import type { Kysely } from 'kysely';
+import { throwawayCluster } from '../../src/commands/cluster.ts';
 import { createDatabase, dropDatabase } from '../../src/lib/server/db/admin.ts';
 import { connect } from '../../src/lib/server/db/connect.ts';
 import { migrate } from '../../src/lib/server/db/migrate.ts';
 import type { Database } from '../../src/lib/server/db/schema.ts';
+import { testEnv } from '../../src/lib/server/env.ts';
 
 export interface TestDatabase {
 	/** Signs in as the owner. */
@@ -37,6 +39,27 @@ export async function copyOf(clusterUrl: string, template: string): Promise<Test
 			await inCluster(clusterUrl, (db) => dropDatabase(db, name));
 		}
 	};
+}
+
+export interface TestCluster {
+	url: string;
+	template: string;
+	/** Takes away what was made; a cluster that was given stays. */
+	remove(): Promise<void>;
+}
+
+/** The cluster that was given, or one of our own, with a migrated database in it. */
+export async function testCluster(): Promise<TestCluster> {
+	const given = testEnv().databaseUrl;
+	const own = given === null ? await throwawayCluster() : null;
+	const url = given ?? own?.url ?? '';
+	try {
+		const template = await makeTemplate(url);
+		return { url, template, remove: () => own?.remove() ?? dropTemplate(url, template) };
+	} catch (error) {
+		await own?.remove();
+		throw error;
+	}
 }
 
 /** A migrated, empty database that nobody is connected to. */

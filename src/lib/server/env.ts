@@ -70,6 +70,11 @@ const startShape = z.object({
 
 const testShape = z.object({
 	TEST_DATABASE_URL: databaseUrl.optional(),
+	TEST_TEMPLATE: z
+		.string()
+		.regex(/^[a-z0-9_]+$/)
+		.optional()
+		.meta({ wants: 'the name of a migrated database', example: 'turnstead_template' }),
 	SOAK: z.enum(['1']).optional().meta({ wants: '"1" or nothing', example: '1' })
 });
 
@@ -97,6 +102,8 @@ export interface StartEnv {
 export interface TestEnv {
 	/** A database of a cluster in which databases may be made and dropped; null: the tests start their own cluster. */
 	databaseUrl: string | null;
+	/** A migrated database of that cluster to copy; null: the tests make one. */
+	template: string | null;
 	soak: boolean;
 }
 
@@ -160,7 +167,17 @@ export function startEnv(source: Source = process.env): StartEnv {
 
 export function testEnv(source: Source = process.env): TestEnv {
 	const found = read(testShape, source);
-	return { databaseUrl: found.TEST_DATABASE_URL ?? null, soak: found.SOAK === '1' };
+	return {
+		databaseUrl: found.TEST_DATABASE_URL ?? null,
+		template: found.TEST_TEMPLATE ?? null,
+		soak: found.SOAK === '1'
+	};
+}
+
+/** Tells the workers of a browser test, which inherit this process's environment, where the databases are. */
+export function provideTestEnv(databaseUrl: string, template: string): void {
+	process.env.TEST_DATABASE_URL = databaseUrl;
+	process.env.TEST_TEMPLATE = template;
 }
 
 /** Gives the served program, running in this process, what it reads through `env()`. */
