@@ -48,6 +48,7 @@ describe('the reader of imports', () => {
 		['src/lib/bench/a.ts', "import type { B } from '../server/b.ts'; type C = import('../server/b.ts').C;"],
 		['src/entry.js', "process.env.A = 'b'; process.env['A'] ??= 'b'; delete process.env.A;"],
 		['src/lib/server/env.ts', 'export const port = process.env.PORT;'],
+		['simulator/main.ts', 'const key = process.env.KEY;'],
 		['src/lib/serverless.ts', "import { b } from './server-words.ts';"],
 		['simulator/a.ts', "import '../src/lib/turnline/b.ts'; import '../src/lib/winding/b.ts'; import 'ws';"],
 		['firmware-protocol/bridge/a.ts', "import '../../src/lib/turnline/b.ts'; import 'node:fs';"],
@@ -92,6 +93,7 @@ describe('the reader of imports', () => {
 		['src/lib/server/auth/a.ts', "const a = process['env'];", /reads the environment/],
 		['src/lib/server/auth/a.ts', "import { env } from 'node:process';", /reads the environment/],
 		['src/lib/server/auth/a.ts', "import { SECRET } from '$env/static/private';", /environment is read in/],
+		['simulator/device.ts', 'const key = process.env.KEY;', /reads the environment/],
 		['src/routes/+page.svelte', '<script>let a = process.env.A;</script>', /reads the environment/],
 		[
 			'simulator/a.ts',
