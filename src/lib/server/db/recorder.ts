@@ -1,5 +1,4 @@
 import { sql, type Kysely, type Transaction } from 'kysely';
-import type { EventKind } from '../../turnline/index.ts';
 import type { CoilPlan, Fact, RunFigures } from '../../winding/types.ts';
 import { backToHead } from './coils.ts';
 import type { Database } from './schema.ts';
@@ -9,7 +8,7 @@ export interface LineRow {
 	b: string;
 	n: number;
 	e: number;
-	k: EventKind | null;
+	k: string | null;
 	f: number;
 	v: number;
 	r: number | null;
@@ -404,18 +403,20 @@ export async function readWinder(trx: Trx, workshopId: string, winderId: string)
 	};
 }
 
-/** What a tap of this id did before, if it was ever made; null: it is new. */
+/** What a tap of this id did before, among the facts after a number; null: it is new. */
 export async function findTap(
 	trx: Trx,
 	workshopId: string,
 	winderId: string,
-	tapId: string
+	tapId: string,
+	afterNo: number
 ): Promise<{ kind: string } | null> {
 	const row = await trx
 		.selectFrom('fact')
 		.select('kind')
 		.where('workshop_id', '=', workshopId)
 		.where('winder_id', '=', winderId)
+		.where('no', '>', afterNo)
 		.where('tap_id', '=', tapId)
 		.orderBy('no')
 		.limit(1)

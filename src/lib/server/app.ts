@@ -1,0 +1,91 @@
+import type { IncomingMessage } from 'node:http';
+import type { Duplex } from 'node:stream';
+import { sql, type Kysely } from 'kysely';
+import { connect } from './db/connect.ts';
+import { migrationState } from './db/migrate.ts';
+import type { Database } from './db/schema.ts';
+import { env } from './env.ts';
+import { IngestCore } from './ingest/ingest.ts';
+import { LinkKeys } from './ingest/keys.ts';
+import { createLinkServer } from './ingest/link-server.ts';
+import type { Ingest } from './ingest/types.ts';
+import { createLiveHub, type LiveHub } from './live/hub.ts';
+
+/** The running program: one a process, whichever copy of a module asks for it. */
+export interface Turnstead {
+	db: Kysely<Database>;
+	ingest: Ingest;
+	live: LiveHub;
+	keys: LinkKeys;
+	/** Takes over a WebSocket upgrade of the HTTP server. */
+	upgrade(request: IncomingMessage, socket: Duplex, head: Buffer): void;
+	/** Whether the database answers, as the right role, with the migrations this code needs. */
+	health(): Promise<{ ok: true } | { ok: false; why: string }>;
+	/** Links are told to come back, the last batch is written, streams end, the pool closes. */
+	stop(): Promise<void>;
+}
+
+// The entry and the built program each load this module: what they share must not live in it.
+const place = Symbol.for('turnstead');
+const places = globalThis as unknown as Record<symbol, Turnstead | undefined>;
+
+/** A screen that hears no beat for some seconds knows that the way to it is broken. */
+const beatMs = 2_000;
+
+/** Throws before `startTurnstead`. */
+export function turnstead(): Turnstead {
+	const app = places[place];
+	if (!app) throw new Error('The program has not been started.');
+	return app;
+}
+
+/** Starts the program, once; afterwards `turnstead()` finds it. */
+export async function startTurnstead(): Promise<Turnstead> {
+	return (places[place] ??= makeTurnstead(connect(env().databaseUrl, { role: 'turnstead_app' })));
+}
+
+/** The program on a database connected as turnstead_app. Nothing is asked of the database before the first request. */
+export function makeTurnstead(db: Kysely<Database>): Turnstead {
+	const live = createLiveHub();
+	const keys = new LinkKeys(db);
+	const ingest = new IngestCore({ db, live, onConfigChanged: (winderId) => keys.forget(winderId) });
+	const links = createLinkServer(ingest, keys);
+	const beat = setInterval(() => live.beat(), beatMs);
+	beat.unref();
+	ingest.start();
+
+	let stopped: Promise<void> | null = null;
+	const stop = async () => {
+		await links.close();
+		await ingest.stop();
+		clearInterval(beat);
+		live.close();
+		await db.destroy();
+		if (places[place] === app) delete places[place];
+	};
+	const app: Turnstead = {
+		db,
+		ingest,
+		live,
+		keys,
+		upgrade: links.upgrade,
+		health: () => health(db),
+		stop: () => (stopped ??= stop())
+	};
+	return app;
+}
+
+async function health(db: Kysely<Database>): Promise<{ ok: true } | { ok: false; why: string }> {
+	try {
+		const { rows } = await sql<{ role: string }>`select current_user as role`.execute(db);
+		if (rows[0]?.role !== 'turnstead_app') {
+			return { ok: false, why: `the database is used as ${rows[0]?.role}, not as turnstead_app` };
+		}
+		return await migrationState(db);
+	} catch (error) {
+		return {
+			ok: false,
+			why: `the database does not answer: ${error instanceof Error ? error.message : String(error)}`
+		};
+	}
+}
