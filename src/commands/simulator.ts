@@ -16,15 +16,14 @@ export interface Simulator {
 /** Starts the simulated winder of the demo workshop. Its link key goes by the environment, where no process list shows it. */
 export function startSimulator(url: string, winder: DemoWinder, onEnd: (code: number | null) => void): Simulator {
 	const main = join(projectFolder, 'simulator', 'main.ts');
-	const args = ['--import', 'tsx', main, '--server', url, '--winder', winder.id, '--scenario', 'workshop'];
-	// A certificate for the name of the shop is not one for 127.0.0.1, and this child speaks to nobody but this process.
-	const trust: Record<string, string> = url.startsWith('https:')
-		? { NODE_TLS_REJECT_UNAUTHORIZED: '0', NODE_NO_WARNINGS: '1' }
-		: {};
+	const args = ['--import', 'tsx', main, '--server', url, '--winder', winder.id, '--name', winder.name];
+	args.push('--scenario', 'workshop', '--quiet', '--with-parent');
+	// The certificate is for the name of the shop, not for the address by which this machine reaches itself.
+	if (/^https:\/\/(127\.|localhost|\[::1\])/.test(url)) args.push('--insecure-tls');
 	const child: ChildProcess = spawn(process.execPath, args, {
 		cwd: projectFolder,
 		stdio: ['ignore', 'ignore', 'inherit'],
-		env: childEnv({ TURNSTEAD_LINK_KEY: winder.linkKey, ...trust }),
+		env: childEnv({ TURNSTEAD_LINK_KEY: winder.linkKey }),
 		// A session of its own: Ctrl-C reaches it through this process, after the screens were told.
 		detached: true
 	});
