@@ -1,7 +1,7 @@
 import type { IncomingMessage } from 'node:http';
 import type { Duplex } from 'node:stream';
 import { WebSocketServer, type WebSocket } from 'ws';
-import { formatLine } from '../../turnline/index.ts';
+import { formatLine, holdMsMax } from '../../turnline/index.ts';
 import type { IngestCore, TakenIn } from './ingest.ts';
 import { bearerOf, type LinkKeys } from './keys.ts';
 import type { SeatLink } from './seat.ts';
@@ -120,7 +120,7 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 		const hold = (ms: number) => {
 			againstHold += 1;
 			if (againstHold > againstHoldMax) socket.close(closeCodes.overload, 'too many lines');
-			else send([formatLine({ verb: 'HOLD', ms })]);
+			else send([formatLine({ verb: 'HOLD', ms: Math.min(ms, holdMsMax) })]);
 		};
 
 		const take = async (text: string) => {
