@@ -11,7 +11,7 @@ describe('plain words', () => {
 				mark: 500,
 				note: 'even',
 				over: 2,
-				back: 4,
+				total: 4,
 				uncertain: 9,
 				reason: 'wire snapped',
 				leftAt: 812,
@@ -32,7 +32,7 @@ describe('plain words', () => {
 	});
 
 	it('say one turn in the singular', () => {
-		expect(factText('taken-back', { turns: 10, detail: { back: 1 } })).toBe('Taken back 1 turn');
+		expect(factText('taken-back', { turns: 10, detail: { turns: 1, total: 1 } })).toBe('Taken back 1 turn');
 	});
 
 	it('keep a kind of a later version readable', () => {

@@ -79,11 +79,11 @@ const factWords: Record<FactKind, (fact: ToldFact) => string> = {
 		return over === null ? 'Went over the target' : `Went over the target by ${wholeText(over)}`;
 	},
 	'on-count': () => 'On count',
-	'taken-back': (fact) => withTurns('Taken back', count(fact, 'back') ?? count(fact, 'turns')),
+	'taken-back': (fact) => withTurns('Taken back', count(fact, 'turns')),
 	'taking-off': () => 'Taking off: turns from here are subtracted',
 	'taking-off-done': () => 'Taking off ended: turns count up again',
 	snapped: () => 'Wire snapped',
-	'snap-placed': (fact) => withTurns('Wire left the bobbin at', count(fact, 'leftAt') ?? fact.turns),
+	'snap-placed': (fact) => withTurns('Wire left the bobbin at', count(fact, 'leftAt')),
 	'no-snap': () => 'The wire had held after all',
 	jumped: (fact) => {
 		const take = count(fact, 'take');
@@ -91,25 +91,39 @@ const factWords: Record<FactKind, (fact: ToldFact) => string> = {
 			? 'The count jumped; the total before it was held'
 			: `The count jumped to ${wholeText(take)}; the total before it was held`;
 	},
-	'jump-taken': (fact) => withTurns('The new count was taken:', count(fact, 'take') ?? fact.turns),
-	'jump-kept': (fact) => withTurns('The count before the jump was kept:', count(fact, 'keep') ?? fact.turns),
+	'jump-taken': (fact) => withTurns('The new count was taken:', fact.turns),
+	'jump-kept': (fact) => withTurns('The count before the jump was kept:', fact.turns),
 	'jump-gone': () => 'The jump went away by itself; nothing was taken from it',
 	restarted: (fact) => {
 		const uncertain = count(fact, 'uncertain');
 		if (uncertain === null) return 'The winder restarted; how many turns it missed cannot be known';
 		return `The winder restarted; up to ${turnsText(uncertain)} uncertain`;
 	},
-	'restart-answered': (fact) => withTurns('After the restart the count went on from', fact.turns),
+	'restart-answered': (fact) =>
+		word(fact, 'answer') === 'true-count'
+			? withTurns('The true count was typed:', count(fact, 'turns'))
+			: withTurns('After the restart the count went on from', fact.turns),
 	bridged: () => 'The winder restarted and kept its totals; no turn was lost',
-	'pulses-ended': () => 'Pulses ended at speed: the spindle stopped, or the sensor lost its magnet',
+	'pulses-ended': (fact) => {
+		const rpm = count(fact, 'rpm');
+		const at = rpm === null ? 'speed' : `${wholeText(Math.abs(rpm))} rpm`;
+		return `Pulses ended at ${at}: the spindle stopped, or the sensor lost its magnet`;
+	},
 	'said-stopped': () => 'Answered: the spindle had stopped',
 	'said-not-stopped': () => 'Answered: it had not stopped; the count from here is not to be trusted',
 	'which-winder': (fact) => {
-		const name = word(fact, 'name') ?? word(fact, 'otherName');
-		return name ? `Another winder turned as well: ${name}` : 'Another winder turned as well';
+		const answer = word(fact, 'answer');
+		if (answer === 'this-winder') return 'Answered: it is wound on this winder';
+		if (answer === 'other-winder') return 'Answered: it is wound on the other winder';
+		const other = word(fact, 'other');
+		return other ? `Another winder turned as well: ${other}` : 'Another winder turned as well';
 	},
 	kept: (fact) => withTurns('Kept with', fact.turns),
-	undone: () => 'Undone: not kept after all',
+	undone: (fact) => {
+		const was = word(fact, 'was') ?? word(fact, 'tap');
+		if (was === 'kept' || was === 'keep') return 'Undone: not kept after all';
+		return was === 'set-aside' ? 'Undone: not set aside after all' : 'Undone';
+	},
 	'set-aside': (fact) => {
 		const reason = word(fact, 'reason');
 		return reason ? `Set aside: ${reason}` : 'Set aside';
@@ -119,7 +133,7 @@ const factWords: Record<FactKind, (fact: ToldFact) => string> = {
 	'line-mismatch': () => 'A line came twice with different content; the first was kept',
 	'buffer-overflow': () => 'The winder’s memory was full: the count is exact, some detail of speed is missing',
 	bouncing: () => 'The sensor bounced; the count is not affected',
-	'missed-pulses': (fact) => withTurns('Turns may have been missed:', count(fact, 'missed') ?? count(fact, 'g')),
+	'missed-pulses': (fact) => withTurns('Turns may have been missed:', count(fact, 'missed')),
 	'pulses-per-turn': () => 'Speed and count did not agree: two pulses a turn?',
 	'clock-odd': () => 'The winder’s clock ran fast or slow; the count is right, speeds are not to be relied on',
 	'two-winders': () => 'Two winders share this name',
