@@ -144,6 +144,44 @@ export async function revokeLinkKey(trx: Trx, workshopId: string, winderId: stri
 	return result.numUpdatedRows > 0n ? 'ok' : 'not-found';
 }
 
+/**
+ * Takes a winder out of use; its runs stay. `has-run`: a coil lies on its bench, and is put back, kept or set aside first.
+ * Afterwards tell `ingest.configChanged`.
+ */
+export async function removeWinder(
+	trx: Trx,
+	workshopId: string,
+	winderId: string
+): Promise<'ok' | 'has-run' | 'not-found'> {
+	if (!isUuid(winderId)) return 'not-found';
+	// Locked first: a bench that takes a coil refers to this row and waits, or has taken it and is seen below.
+	const row = await trx
+		.selectFrom('winder')
+		.select('id')
+		.where('workshop_id', '=', workshopId)
+		.where('id', '=', winderId)
+		.where('removed_at', 'is', null)
+		.forUpdate()
+		.executeTakeFirst();
+	if (!row) return 'not-found';
+	const open = await trx
+		.selectFrom('run')
+		.select('id')
+		.where('workshop_id', '=', workshopId)
+		.where('winder_id', '=', winderId)
+		.where('state', '=', 'open')
+		.limit(1)
+		.executeTakeFirst();
+	if (open) return 'has-run';
+	await trx
+		.updateTable('winder')
+		.set({ removed_at: new Date(), link_key_hash: null, link_key_made_at: null })
+		.where('workshop_id', '=', workshopId)
+		.where('id', '=', winderId)
+		.execute();
+	return 'ok';
+}
+
 /** Whose link key this is, before the workshop is known. */
 export async function findLinkKey(
 	db: Kysely<Database>,
