@@ -1,7 +1,6 @@
 /**
- * How much later than usual an event came. Server and browser share no clock, so the smallest difference seen between an
- * event's own time and its arrival is taken for an undelayed one; a small drift of the clocks is forgotten with the
- * windows.
+ * How old what came really is. Server and browser share no clock: the smallest difference seen between a message's own
+ * time and its arrival is taken for one that was not held up. A slow drift of the clocks is forgotten with the windows.
  */
 export interface Arrivals {
 	/** Smallest difference in this window and in the one before, ms. */
@@ -9,6 +8,7 @@ export interface Arrivals {
 	leastBefore: number;
 	windowSinceMs: number;
 	lastAtMs: number;
+	/** How much later than usual the last beat came. */
 	delayMs: number;
 }
 
@@ -17,11 +17,13 @@ const windowMs = 60_000;
 const slackMs = 250;
 
 /**
- * @param before null at the first event
+ * Takes in a beat, which carries the time of its sending.
+ *
+ * @param before null at the first beat
  * @param sentAt Unix ms on the server's clock
  * @param receivedAtMs monotonic ms of the browser
  */
-export function arrived(before: Arrivals | null, sentAt: number, receivedAtMs: number): Arrivals {
+export function beatCame(before: Arrivals | null, sentAt: number, receivedAtMs: number): Arrivals {
 	const difference = receivedAtMs - sentAt;
 	const fresh = {
 		least: difference,
@@ -31,8 +33,7 @@ export function arrived(before: Arrivals | null, sentAt: number, receivedAtMs: n
 		delayMs: 0
 	};
 	if (before === null) return fresh;
-	const usual = Math.min(before.least, before.leastBefore);
-	const delayMs = difference - usual;
+	const delayMs = difference - usual(before);
 	// A delay cannot grow by more than the time that has passed: beyond that the server's clock was set back.
 	if (delayMs > before.delayMs + (receivedAtMs - before.lastAtMs) + slackMs) return fresh;
 	const next =
@@ -45,3 +46,16 @@ export function arrived(before: Arrivals | null, sentAt: number, receivedAtMs: n
 				};
 	return { ...next, lastAtMs: receivedAtMs, delayMs: Math.max(0, delayMs) };
 }
+
+/**
+ * How long before its arrival a state was made, beyond what every message takes: held up on the way, or made long ago and
+ * sent as the newest there is.
+ *
+ * @param madeAt Unix ms on the server's clock
+ * @returns ms, 0 when no beat has come yet
+ */
+export function madeBeforeMs(arrivals: Arrivals | null, madeAt: number, receivedAtMs: number): number {
+	return arrivals === null ? 0 : Math.max(0, receivedAtMs - madeAt - usual(arrivals));
+}
+
+const usual = ({ least, leastBefore }: Arrivals) => Math.min(least, leastBefore);

@@ -21,7 +21,10 @@ class HandSource {
 	}
 }
 
-function bench(shown: LiveView | null = null, answer: () => Promise<Response> = () => Promise.reject(new Error('off'))) {
+function bench(
+	shown: LiveView | null = null,
+	answer: () => Promise<Response> = () => Promise.reject(new Error('off'))
+) {
 	const sources: HandSource[] = [];
 	const timers: { run: () => void; ms: number; live: boolean }[] = [];
 	const told: string[] = [];

@@ -48,6 +48,7 @@ export class Feed {
 	#retry: unknown = null;
 	#watch: unknown = null;
 	#stopped = false;
+	#streaming = false;
 	#shown: { server: string; seq: number } | null;
 
 	constructor(
@@ -89,6 +90,7 @@ export class Feed {
 		this.#retry = this.#watch = null;
 		this.#source?.close();
 		this.#source = null;
+		this.#streaming = false;
 	}
 
 	#connect(): void {
@@ -119,9 +121,11 @@ export class Feed {
 
 	#heard(): void {
 		this.#attempt = 0;
+		this.#watchSilence();
+		if (this.#streaming) return;
+		this.#streaming = true;
 		this.events.streaming(true);
 		this.events.access('ok');
-		this.#watchSilence();
 	}
 
 	#watchSilence(): void {

@@ -108,7 +108,9 @@ export interface BenchModel {
 
 export interface PresentOptions {
 	timeZone: string;
-	/** How much later than usual the newest event came, in ms. */
+	/** How long before its arrival the view was made, in ms. */
+	madeBeforeMs: number;
+	/** How much later than usual the last beat came, in ms. */
 	delayMs: number;
 	/** Since anything came down the stream, in ms. */
 	silenceMs: number;
@@ -133,10 +135,13 @@ export interface PresentOptions {
 	sound: 'asleep' | 'ask' | 'on' | 'screen-only';
 	/** Cues that came while nobody could see or hear them. */
 	missed: readonly string[];
+	/** false: the screen may go dark by itself. */
+	awake: boolean;
 }
 
 export const quietOptions: PresentOptions = {
 	timeZone: 'UTC',
+	madeBeforeMs: 0,
 	delayMs: 0,
 	silenceMs: 0,
 	streaming: true,
@@ -150,8 +155,13 @@ export const quietOptions: PresentOptions = {
 	keptSeenAtMs: null,
 	caughtUp: false,
 	sound: 'on',
-	missed: []
+	missed: [],
+	awake: true
 };
+
+/** Beside the tap that starts a coil, in short; the screen's own sheet has it in full. */
+export const startCaution =
+	'Stop the winder before reaching in. The stop cue is a work signal, not an emergency stop: fit a real switch.';
 
 /** A double tap on "Keep this coil" must not land on Undo. */
 export const undoAfterMs = 1_000;
@@ -257,7 +267,7 @@ export function present(
 	options: PresentOptions = quietOptions
 ): BenchModel {
 	const sinceMs = Math.max(0, nowMs - receivedAtMs);
-	const ageMs = view.ageMs === null ? null : view.ageMs + options.delayMs + sinceMs;
+	const ageMs = view.ageMs === null ? null : view.ageMs + options.madeBeforeMs + sinceMs;
 	const run = view.run;
 	const link = linkNow(view, ageMs, options.unsure);
 	const lost = link === 'no-signal' || link === 'never';
@@ -286,7 +296,7 @@ export function present(
 		};
 	}
 
-	shown = withAccess(withWaitingTaps(shown, run, options), options, turning);
+	shown = withAccess(withWaitingTaps(shown, run, options), view, options, turning);
 	if (!turning && options.access === 'ok') {
 		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first.
 		if (options.sound === 'ask' && run?.question == null) shown = { ...shown, ...soundQuestion };
@@ -387,7 +397,15 @@ function turningFace(run: RunView): Face {
 	if (run.cue === 'stop') return face({ ground: 'stop', shape: 'bar', word: 'Stop', beside, alert: 'Stop' });
 	if (run.state === 'easing' || run.cue === 'ease') {
 		const ahead = `stop at ${wholeText(run.target)}`;
-		return face({ ground: 'ease', shape: 'falling-bars', word: 'Ease off', beside, ahead, status: 'Ease off', ...wire });
+		return face({
+			ground: 'ease',
+			shape: 'falling-bars',
+			word: 'Ease off',
+			beside,
+			ahead,
+			status: 'Ease off',
+			...wire
+		});
 	}
 	if (run.cue === 'look') {
 		const at = run.nextLook ?? run.onBobbin;
@@ -408,6 +426,7 @@ function standingFace(view: LiveView, run: RunView): Face {
 				word: 'Waiting',
 				beside,
 				ahead: 'starts by turning, too',
+				text: startCaution,
 				taps: [start, queueTap],
 				pedal: start
 			});
@@ -432,11 +451,7 @@ function standingFace(view: LiveView, run: RunView): Face {
 		case 'on-count': {
 			const keep = tap('Keep this coil', 'main', { kind: 'keep' });
 			const word =
-				run.left === 0
-					? 'On the mark'
-					: run.left < 0
-						? `${wholeText(-run.left)} over`
-						: `${wholeText(run.left)} short`;
+				run.left === 0 ? 'On the mark' : run.left < 0 ? `${wholeText(-run.left)} over` : `${wholeText(run.left)} short`;
 			return face({
 				ground: 'mark',
 				shape: 'tick',
@@ -639,21 +654,23 @@ function withWaitingTaps(shown: Face, run: RunView | null, options: PresentOptio
 	if (run?.pendingTap) waiting.add(run.pendingTap);
 	if (waiting.size === 0) return shown;
 	const off = (one: BenchTap | null) => (one?.act.do === 'tap' && waiting.has(one.act.tap.kind) ? null : one);
+	// A tap that waits for lines can still be taken back.
+	const undo = run?.pendingTap && !waiting.has('undo') ? [tap('Undo', 'small', { kind: 'undo' })] : [];
 	return {
 		...shown,
-		taps: shown.taps.map((one) => (off(one) ? one : { ...one, enabled: false })),
+		taps: [...shown.taps.map((one) => (off(one) ? one : { ...one, enabled: false })), ...undo],
 		entry: shown.entry && waiting.has(shown.entry.tap) ? null : shown.entry,
 		pedal: off(shown.pedal),
 		pedalHeld: off(shown.pedalHeld)
 	};
 }
 
-function withAccess(shown: Face, options: PresentOptions, turning: boolean): Face {
+function withAccess(shown: Face, view: LiveView, options: PresentOptions, turning: boolean): Face {
 	if (options.access === 'ok') return shown;
 	const out = options.access === 'signed-out' && !turning;
 	return {
 		...shown,
-		taps: out ? [go('Sign in again', 'main', '/sign-in')] : [],
+		taps: out ? [go('Sign in again', 'main', `/sign-in?to=${encodeURIComponent(`/bench/${view.winderId}`)}`)] : [],
 		entry: null,
 		pedal: null,
 		pedalHeld: null,
@@ -662,7 +679,7 @@ function withAccess(shown: Face, options: PresentOptions, turning: boolean): Fac
 }
 
 const soundQuestion = {
-	ahead: 'Did you hear it?',
+	text: 'Did you hear it?',
 	taps: [
 		{ key: 'heard', label: 'Yes, I heard it', size: 'main', act: { do: 'heard', yes: true }, enabled: true },
 		{ key: 'unheard', label: 'No, screen only', size: 'main', act: { do: 'heard', yes: false }, enabled: true }
@@ -695,7 +712,11 @@ function messagesOf(
 	if (options.access === 'gone') messages.push('this winder is no longer here');
 	if (options.refusal !== null) messages.push(options.refusal);
 	if (!view.saving) messages.push('counting, not saving');
-	const unsaved = Math.max(options.waitingMs >= waitingShownAfterMs ? options.waitingTaps.length : 0, 0);
+	// A commit under way is no news; facts held back by a database that is away are.
+	const unsaved = Math.max(
+		options.waitingMs >= waitingShownAfterMs ? options.waitingTaps.length : 0,
+		view.saving ? 0 : view.unsaved
+	);
 	if (unsaved > 0) messages.push(`waiting to save (${unsaved})`);
 	if (run?.pendingTap) messages.push('waiting for the winder’s lines');
 
@@ -707,7 +728,9 @@ function messagesOf(
 		if (!options.streaming) messages.push('no connection to the server');
 		else if (lateMs > 0) messages.push(`network is delaying data (${tenths(lateMs)})`);
 		else if (ageMs !== null && (link === 'old' || link === 'no-signal')) {
-			messages.push(`last line ${ageMs < 60_000 ? `${Math.floor(ageMs / 1000)} s` : ageText(ageMs).slice(0, -4)} ago: cable?`);
+			messages.push(
+				`last line ${ageMs < 60_000 ? `${Math.floor(ageMs / 1000)} s` : ageText(ageMs).slice(0, -4)} ago: cable?`
+			);
 		} else if (link === 'never') messages.push('this winder has not sent a line yet');
 	}
 	if (options.caughtUp) messages.push('caught up');
@@ -720,10 +743,14 @@ function messagesOf(
 			messages.push(`${wholeText(run.takenBack)} taken back`);
 		}
 		const emptyTurns = run.turns - run.onBobbin;
-		if (emptyTurns > 0 && run.snaps.length > 0) messages.push(`counted ${wholeText(run.turns)}, ${wholeText(emptyTurns)} empty`);
+		if (emptyTurns > 0 && run.snaps.length > 0)
+			messages.push(`counted ${wholeText(run.turns)}, ${wholeText(emptyTurns)} empty`);
 	}
 	for (const notice of view.notices) messages.push(noticeText[notice]);
 	if (!turning && options.sound === 'asleep') messages.push('sound is off – tap');
+	if (!turning && !options.awake && run?.startedAt == null) {
+		messages.push('this tablet may sleep: set its screen time-out');
+	}
 	if (view.last && run?.state === 'waiting') {
 		messages.push(
 			view.last.state === 'kept'

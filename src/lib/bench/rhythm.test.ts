@@ -67,7 +67,8 @@ describe('rhythms', () => {
 	});
 
 	it('no two tones of a rhythm run into each other', () => {
-		for (const tones of [lookComing, lookNow, stop, noSignal, testTone, overTicks(10, 0)]) expect(apart(tones)).toBe(true);
+		for (const tones of [lookComing, lookNow, stop, noSignal, testTone, overTicks(10, 0)])
+			expect(apart(tones)).toBe(true);
 	});
 
 	it('the test tone is none of the cues', () => {

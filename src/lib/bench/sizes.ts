@@ -126,8 +126,7 @@ export function sizesFor(screen: Screen): Sizes {
 	const rows = layout === 'wide' ? 1 : 3;
 	const nearRows = layout === 'wide' ? 2 : 4;
 	const farRows = layout === 'wide' ? 1 : 2;
-	const otherPx =
-		nearRows * nearRowEm * nearPx + farRows * farRowEm * farPx + rows * footPx + (rows - 1) * gapPx + 28;
+	const otherPx = nearRows * nearRowEm * nearPx + farRows * farRowEm * farPx + rows * footPx + (rows - 1) * gapPx + 28;
 	// Two pixels of air on either side of the digits.
 	const innerPx = widthPx - 2 * padPx - 2 * flangePx - 4;
 	const countPx = Math.floor(

@@ -14,9 +14,9 @@ export interface WaitingTap {
 export interface TapEvents {
 	/** The queue changed. */
 	changed(waiting: readonly WaitingTap[]): void;
-	answered(live: LiveView | null, tap: TapKind): void;
-	/** Refused for good, with the plain reason. */
-	refused(reason: string, tap: TapKind): void;
+	answered(live: LiveView | null): void;
+	/** Refused for good, with the plain reason and, where the server tells it, the state it was refused in. */
+	refused(reason: string, live: LiveView | null): void;
 	signedOut(): void;
 }
 
@@ -156,7 +156,7 @@ export class TapQueue {
 			const body = (await readJson(answer)) as { live?: LiveView } | null;
 			if (body === null) return false;
 			this.#done(waiting);
-			this.events.answered(body.live ?? null, waiting.tap);
+			this.events.answered(body.live ?? null);
 			return true;
 		}
 		if (answer.status === 401) {
@@ -165,10 +165,14 @@ export class TapQueue {
 		}
 		// Refused for good; a server that is overloaded, restarting or without its database is asked again.
 		if (answer.status >= 400 && answer.status < 500 && answer.status !== 408 && answer.status !== 429) {
-			const problem = (await readJson(answer)) as { detail?: unknown; title?: unknown } | null;
+			const problem = (await readJson(answer)) as {
+				detail?: unknown;
+				title?: unknown;
+				live?: LiveView;
+			} | null;
 			this.#done(waiting);
 			const reason = [problem?.detail, problem?.title].find((text) => typeof text === 'string' && text !== '');
-			this.events.refused(typeof reason === 'string' ? reason : 'that tap was refused', waiting.tap);
+			this.events.refused(typeof reason === 'string' ? reason : 'that tap was refused', problem?.live ?? null);
 			return true;
 		}
 		return false;
