@@ -245,13 +245,14 @@ const text = (max: number) => z.string().trim().min(1, 'some text').max(max, `${
 
 type Range = { min: number; max: number };
 const words = ({ min, max }: Range) => `from ${min} to ${max}`;
-const number = (range: Range) =>
+const number = (range: Range) => inRange(range, /^\d{1,6}(\.\d{1,6})?$/, `a number ${words(range)}`);
+const whole = (range: Range) => inRange(range, /^\d{1,6}$/, `a whole number ${words(range)}`);
+const inRange = ({ min, max }: Range, form: RegExp, says: string) =>
 	z
 		.string()
-		.regex(/^\d{1,6}(\.\d{1,6})?$/, `a number ${words(range)}`)
+		.regex(form, says)
 		.transform(Number)
-		.refine((n) => n >= range.min && n <= range.max, `a number ${words(range)}`);
-const whole = (range: Range) => number(range).refine(Number.isInteger, `a whole number ${words(range)}`);
+		.refine((n) => n >= min && n <= max, says);
 
 function isTimeZone(name: string): boolean {
 	try {
