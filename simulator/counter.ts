@@ -11,10 +11,13 @@ const steps = [
 	[0, -1, 1, 0]
 ];
 
+/** An output that went off for less than this chatters: the magnet has not left the sensor. */
+const leftMsMin = 3;
+
 /**
  * Edges to pulses, as the firmware's interrupt does it. With two sensors a pulse is a whole magnet passed, all four
  * steps one way, so a spindle rocked on the edge counts nothing. With one sensor a pulse is the output going on after
- * it had been off, and one that follows closer than half the shortest possible period is refused.
+ * the magnet had left, and one that follows closer than half the shortest possible period is refused.
  */
 export class Counter {
 	/** Refused, bouncing pulses. */
@@ -23,6 +26,7 @@ export class Counter {
 	private state = 0;
 	private travelled = 0;
 	private lastOnMs = -Infinity;
+	private lastOffMs = -Infinity;
 	private readonly closestMs: number;
 
 	constructor(
@@ -49,8 +53,12 @@ export class Counter {
 	}
 
 	private noteBounce(edge: Edge): boolean {
-		if (edge.channel !== 'A' || !edge.on) return false;
-		const bounced = edge.atMs - this.lastOnMs < this.closestMs;
+		if (edge.channel !== 'A') return false;
+		if (!edge.on) {
+			this.lastOffMs = edge.atMs;
+			return false;
+		}
+		const bounced = edge.atMs - this.lastOnMs < this.closestMs || edge.atMs - this.lastOffMs < leftMsMin;
 		if (bounced) this.refused++;
 		else this.lastOnMs = edge.atMs;
 		return bounced;

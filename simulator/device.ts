@@ -174,7 +174,9 @@ export class Device {
 
 	/** Turns of the coil under the plan, or null without one. */
 	get turns(): number | null {
-		return this.now.plan && this.now.plan.sign * (this.net - this.now.plan.from);
+		const plan = this.now.plan;
+		if (!plan) return null;
+		return plan.sign > 0 ? this.net - plan.from : plan.from - this.net;
 	}
 
 	/** What its lamps and its display tell the maker. */
@@ -233,7 +235,9 @@ export class Device {
 		if (nowMs >= boot.tickDueMs) {
 			this.tick(nowMs);
 			const slow = !boot.turning || nowMs < this.heldUntilMs;
-			boot.tickDueMs = nowMs + (slow ? tickMs.standing : tickMs.turning) * this.traits.timeScale;
+			const periodMs = (slow ? tickMs.standing : tickMs.turning) * this.traits.timeScale;
+			// By the grid, so that the loop's own pace does not add up; never several at once.
+			boot.tickDueMs = Math.max(boot.tickDueMs + periodMs, nowMs + periodMs / 2);
 		}
 		if (this.linked && nowMs >= this.resendCheckMs) this.sendAgain(nowMs);
 	}

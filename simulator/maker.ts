@@ -111,6 +111,8 @@ export class Maker {
 	};
 	private markTurns = 0;
 	private rocking = false;
+	/** At this look turns have been taken back. */
+	private tookBack = false;
 	private acts: Act[] = [];
 
 	constructor(
@@ -243,6 +245,7 @@ export class Maker {
 		this.noticedMs = { snap: null, counter: null, dark: null };
 		if (this.reason === 'look') {
 			this.acts.push('look');
+			this.tookBack = false;
 			this.rocking = sight.seesDirection && this.random() < this.traits.rockChance;
 			this.go('looking', nowMs, this.traits.lookMs);
 		} else if (this.reason === 'snap') this.go('splicing', nowMs, this.traits.spliceMs);
@@ -254,7 +257,8 @@ export class Maker {
 	private looking(nowMs: number, sight: Sight): Drive {
 		// The winder calls the look until it has seen the spindle stand.
 		if (nowMs >= this.untilMs && sight.cues?.cue !== 'look' && !sight.displayTurning) {
-			if (sight.seesDirection && this.random() < this.traits.takeBackChance) {
+			if (sight.seesDirection && !this.tookBack && this.random() < this.traits.takeBackChance) {
+				this.tookBack = true;
 				this.acts.push('take-back');
 				this.markTurns = sight.spindleTurns;
 				this.untilMs = between(this.random, 2, 6);

@@ -133,6 +133,8 @@ export class Sensor {
 	private readonly slackTurns: number;
 	private readonly on: Record<Channel, boolean> = { A: false, B: false };
 	private magnetFitted = true;
+	/** A magnet is within reach of a sensor, seen or not; whether it is seen is decided once. */
+	private near = false;
 	private unseen = false;
 	private angleTurns: number | null = null;
 
@@ -170,14 +172,14 @@ export class Sensor {
 	}
 
 	private look(angle: number, atMs: number, edges: Edge[]): void {
-		const wasClear = !this.on.A && !this.on.B;
 		const channels: Channel[] = this.traits.seesDirection ? ['A', 'B'] : ['A'];
-		for (const channel of channels) {
-			const distance = this.distance(angle, channel === 'A' ? 0 : this.reachTurns);
+		const distances = channels.map((channel) => this.distance(angle, channel === 'A' ? 0 : this.reachTurns));
+		const near = Math.min(...distances) <= this.reachTurns + this.slackTurns;
+		if (near && !this.near) this.unseen = this.random() < this.traits.missChance;
+		this.near = near;
+		for (const [at, channel] of channels.entries()) {
 			const reach = this.on[channel] ? this.reachTurns + this.slackTurns : this.reachTurns;
-			const near = distance <= reach;
-			if (near && wasClear && !this.on[channel]) this.unseen = this.random() < this.traits.missChance;
-			const on = near && this.magnetFitted && !this.unseen;
+			const on = distances[at]! <= reach && this.magnetFitted && !this.unseen;
 			if (on === this.on[channel]) continue;
 			this.on[channel] = on;
 			edges.push({ atMs, channel, on });
