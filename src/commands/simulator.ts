@@ -5,8 +5,8 @@ import { projectFolder } from './data-folder.ts';
 import type { DemoWinder } from './demo.ts';
 import { until } from './processes.ts';
 
-/** A simulator that was asked to end says good-bye to the server; one that does not is ended. */
-const GOODBYE_MS_MAX = 1_500;
+/** A simulator that was asked to end says good-bye to the server, which then need not wait for more than this. */
+const GOODBYE_MS_MAX = 300;
 
 export interface Simulator {
 	pid: number;
