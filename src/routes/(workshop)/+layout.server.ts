@@ -1,6 +1,8 @@
 import type { LayoutServerLoad } from './$types';
 import { guard } from '$lib/server/auth/guard';
 import { may, type Action } from '$lib/server/auth/may';
+import { countWaiting } from '$lib/server/db/coils';
+import { inWorkshop } from '$lib/server/db/connect';
 
 /** What a page asks before it shows a button; the server asks again before it does the thing. */
 const shown = [
@@ -12,7 +14,8 @@ const shown = [
 	'workshop.change'
 ] as const satisfies Action[];
 
-export const load: LayoutServerLoad = ({ locals }) => {
+export const load: LayoutServerLoad = async ({ locals, depends }) => {
+	depends('wind:now');
 	const member = guard(locals, 'me.change');
 	return {
 		member: {
@@ -23,6 +26,7 @@ export const load: LayoutServerLoad = ({ locals }) => {
 			workshopName: member.workshopName,
 			timeZone: member.timeZone
 		},
+		waiting: await inWorkshop(locals.db, member.workshopId, (trx) => countWaiting(trx, member.workshopId)),
 		may: Object.fromEntries(shown.map((action) => [action, may(member.role, action)])) as Record<
 			(typeof shown)[number],
 			boolean

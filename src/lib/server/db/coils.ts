@@ -58,6 +58,17 @@ export async function listWaiting(trx: Trx, workshopId: string): Promise<Coil[]>
 	return rows.map(toCoil);
 }
 
+/** How many coils wait, for the strip across every page. */
+export async function countWaiting(trx: Trx, workshopId: string): Promise<number> {
+	const { n } = await trx
+		.selectFrom('coil')
+		.select((eb) => eb.fn.countAll<number>().as('n'))
+		.where('workshop_id', '=', workshopId)
+		.where('state', '=', 'waiting')
+		.executeTakeFirstOrThrow();
+	return n;
+}
+
 /** Coils the benches hold, with the winder of each. */
 export async function listOnBench(trx: Trx, workshopId: string): Promise<Coil[]> {
 	const rows = await trx
