@@ -27,7 +27,7 @@ class Journal {
 	readonly write: WinderWrite;
 	failures = 0;
 	retryAt = 0;
-	/** When it is due: the first thing in it has waited long enough, or a person waits. */
+	/** When it is due, on the clock that nobody sets: the first thing in it has waited long enough, or a person waits. */
 	dueAt = Infinity;
 	readonly committed: Promise<void>;
 	resolve!: () => void;
@@ -69,7 +69,6 @@ class Journal {
 
 export interface GroupCommitOptions {
 	write: (writes: WinderWrite[]) => Promise<void>;
-	now: () => number;
 	/** Told after each commit, and when the saving of a winder fails. */
 	onSaved: (workshopId: string, winderId: string) => void;
 	onFailed: (workshopId: string, winderId: string, error: unknown) => void;
@@ -102,7 +101,7 @@ export class GroupCommit {
 		}
 		journal.add(more);
 		this.#lines += more.lines?.length ?? 0;
-		const now = this.#options.now();
+		const now = performance.now();
 		journal.dueAt = Math.min(journal.dueAt, soon || this.#lines >= gatherLinesMax ? now : now + gatherMsMax);
 		this.#schedule(Math.max(journal.dueAt, journal.retryAt));
 		return journal.committed;
@@ -164,7 +163,7 @@ export class GroupCommit {
 				this.#timerAt = Infinity;
 				void this.#run(false);
 			},
-			Math.max(0, at - this.#options.now())
+			Math.max(0, at - performance.now())
 		);
 	}
 
@@ -181,7 +180,7 @@ export class GroupCommit {
 	}
 
 	async #flush(all: boolean): Promise<void> {
-		const now = this.#options.now();
+		const now = performance.now();
 		const batch: Journal[] = [];
 		for (const [key, journal] of this.#gathering) {
 			if (!all && journal.retryAt > now) continue;
@@ -224,7 +223,7 @@ export class GroupCommit {
 	}
 
 	#failed(batch: Journal[], error: unknown): void {
-		const now = this.#options.now();
+		const now = performance.now();
 		for (const journal of batch) {
 			const { workshopId, winderId } = journal.write;
 			const key = `${workshopId}/${winderId}`;

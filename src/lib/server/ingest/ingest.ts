@@ -74,7 +74,10 @@ const tapFactsBack = 5_000;
 export interface IngestOptions {
 	db: Kysely<Database>;
 	live: LiveHub;
+	/** The wall clock, Unix ms. */
 	now?: () => number;
+	/** Milliseconds of a clock that nobody sets, for what is done every so often. */
+	steady?: () => number;
 	/** In place of the database, for what a failing one does. */
 	write?: (writes: WinderWrite[]) => Promise<void>;
 	saveWaitMsMax?: number;
@@ -105,6 +108,7 @@ export class IngestCore implements Ingest {
 	readonly #db: Kysely<Database>;
 	readonly #live: LiveHub;
 	readonly #now: () => number;
+	readonly #steady: () => number;
 	readonly #saveWaitMsMax: number;
 	readonly #onConfigChanged: (winderId: string) => void;
 	readonly #onError: (what: string, error: unknown) => void;
@@ -119,13 +123,13 @@ export class IngestCore implements Ingest {
 		this.#db = options.db;
 		this.#live = options.live;
 		this.#now = options.now ?? Date.now;
+		this.#steady = options.steady ?? (() => performance.now());
 		this.#saveWaitMsMax = options.saveWaitMsMax ?? saveWaitMsMax;
 		this.#onConfigChanged = options.onConfigChanged ?? (() => {});
 		this.#onError = options.onError ?? ((what, error) => console.error(what, error));
-		this.#sweptAt = this.#now();
+		this.#sweptAt = this.#steady();
 		this.#commit = new GroupCommit({
 			write: options.write ?? ((writes) => writeBatch(this.#db, writes)),
-			now: this.#now,
 			onSaved: (workshopId, winderId) => this.#saved(workshopId, winderId),
 			onFailed: (workshopId, winderId, error) => this.#failed(workshopId, winderId, error)
 		});
@@ -191,13 +195,13 @@ export class IngestCore implements Ingest {
 				spoken += 1;
 			}
 		}
-		const waitMs = seat.bucket.take(spoken, this.#now());
+		const waitMs = seat.bucket.take(spoken, this.#steady());
 		if (waitMs > 0) return { ok: false, why: 'rate', retryAfterS: Math.ceil(waitMs / 1000) };
 		// Nothing more is held than could be told apart from a leak; the winder keeps its lines.
 		if (this.#commit.unsavedRows(seat.shop.id, seat.id) > unsavedRowsMax) {
 			return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 		}
-		seat.usedAt = this.#now();
+		seat.usedAt = this.#steady();
 		for (const { line, why } of rejected) seat.record.line(receivedAtMs, lines[line - 1] ?? '', why, carrier);
 		if (good.length === 0 && rejected.length > 0) {
 			this.#show(seat);
@@ -272,7 +276,7 @@ export class IngestCore implements Ingest {
 		const seat = await this.#seat(workshopId, winderId);
 		if (!seat) return { ok: false, why: 'not-found' };
 		const now = this.#now();
-		seat.usedAt = now;
+		seat.usedAt = this.#steady();
 		const known = seat.state.tapsDone.some(([id]) => id === tap.id);
 		if (!known) {
 			const before = await this.#tapBefore(seat, tap.id);
@@ -334,7 +338,7 @@ export class IngestCore implements Ingest {
 	async view(workshopId: string, winderId: string): Promise<LiveView | null> {
 		const seat = await this.#seat(workshopId, winderId);
 		if (!seat) return null;
-		seat.usedAt = this.#now();
+		seat.usedAt = this.#steady();
 		return this.#show(seat);
 	}
 
@@ -417,7 +421,7 @@ export class IngestCore implements Ingest {
 			shop.again ||= look;
 			return shop.giving;
 		}
-		if (!look && (shop.waiting === 0 || shop.giveAt > this.#now())) return Promise.resolve();
+		if (!look && (shop.waiting === 0 || shop.giveAt > this.#steady())) return Promise.resolve();
 		shop.giving = this.#giveAll(shop, heard, look).finally(() => {
 			shop.giving = null;
 			if (shop.again) {
@@ -444,7 +448,7 @@ export class IngestCore implements Ingest {
 			}
 			shop.giveAt = 0;
 		} catch (error) {
-			shop.giveAt = this.#now() + giveAgainMs;
+			shop.giveAt = this.#steady() + giveAgainMs;
 			this.#onError('The queue could not be read.', error);
 		}
 		for (const seat of this.#seats.values()) if (seat.shop === shop) this.#show(seat);
@@ -557,8 +561,8 @@ export class IngestCore implements Ingest {
 		const now = this.#now();
 		for (const seat of this.#seats.values()) this.#tickSeat(seat, now);
 		for (const shop of this.#shops.values()) void this.#give(shop);
-		if (now - this.#sweptAt >= sweepMs) {
-			this.#sweptAt = now;
+		if (this.#steady() - this.#sweptAt >= sweepMs) {
+			this.#sweptAt = this.#steady();
 			void this.sweep();
 		}
 	}
@@ -571,16 +575,16 @@ export class IngestCore implements Ingest {
 		}
 		this.#tellLinks(seat);
 		const { trace } = seat;
-		if (trace?.due && now - trace.writtenAt >= traceAgainMs) {
+		if (trace?.due && this.#steady() - trace.writtenAt >= traceAgainMs) {
 			trace.due = false;
-			trace.writtenAt = now;
+			trace.writtenAt = this.#steady();
 			this.#write(seat, { changes: [{ kind: 'trace', runId: trace.runId, trace: trace.stretches }] });
 		}
 		if (this.#snapshotDue(seat)) this.#write(seat, { snapshot: this.#snapshot(seat) });
 		if (step.facts.length > 0 || this.#looksDifferent(seat, now)) this.#show(seat);
 		const watched = this.#live.watchers(seat.shop.id, seat.id) > 0;
 		const unsaved = this.#commit.pending(seat.shop.id, seat.id) !== null;
-		if (now - seat.usedAt > idleMsMax && !watched && !unsaved && seat.links.size === 0) this.#putAway(seat);
+		if (this.#steady() - seat.usedAt > idleMsMax && !watched && !unsaved && seat.links.size === 0) this.#putAway(seat);
 	}
 
 	#looksDifferent(seat: Seat, now: number): boolean {
@@ -643,7 +647,7 @@ export class IngestCore implements Ingest {
 		}
 		shop.next = head.next;
 		shop.waiting = head.waiting;
-		const seat = new Seat(winder, state, saved.factNo, shop, this.#now());
+		const seat = new Seat(winder, state, saved.factNo, shop, this.#steady());
 		this.#seats.set(`${workshopId}/${winder.id}`, seat);
 		// A run whose taking was written, but not yet that this bench has it: the server ended between the two.
 		const held = runIdsOf(state);
@@ -675,7 +679,7 @@ export class IngestCore implements Ingest {
 				const figures = figuresOf(seat.state, seat.config, runId);
 				if (!figures) return [];
 				const trace = traceOf(seat.state, seat.config, run);
-				seat.trace = { runId, stretches: trace, due: false, writtenAt: this.#now() };
+				seat.trace = { runId, stretches: trace, due: false, writtenAt: this.#steady() };
 				return [
 					{
 						kind: 'closed',
@@ -718,12 +722,12 @@ export class IngestCore implements Ingest {
 	#snapshot(seat: Seat): WinderWrite['snapshot'] {
 		const at = this.#now();
 		seat.written = seat.state;
-		seat.writtenAt = at;
+		seat.writtenAt = this.#steady();
 		return { state: seat.state, factNo: seat.factNo, at };
 	}
 
 	#snapshotDue(seat: Seat): boolean {
-		return seat.state !== seat.written && this.#now() - seat.writtenAt >= snapshotMsMin;
+		return seat.state !== seat.written && this.#steady() - seat.writtenAt >= snapshotMsMin;
 	}
 
 	#saved(workshopId: string, winderId: string): void {
