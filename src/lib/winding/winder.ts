@@ -120,6 +120,8 @@ const trailEventsMs = 1_800_000;
 const sessionRestMs = 4 * 3_600_000;
 /** The first look of a session. Common practice, no source. */
 export const firstLookTurns = 100;
+/** A coil that began by turning and has come this far is meant: the question whether to start here goes away. */
+const settledTurns = 200;
 /** How long a keep can be undone. */
 export const undoMs = 10_000;
 /** A tap whose surroundings never come whole is placed at the last line before it. */
@@ -681,6 +683,7 @@ function follow(d: Draft, boot: BootState, point: Point, wasTurning: boolean, de
 		run.takenBackSaid = back;
 	}
 	if (run.snapOpen?.answered && !boot.turning) closeSnap(d, run);
+	if (onBobbin >= settledTurns || run.looks.length > 0) run.settled = true;
 	if (!run.takingOff) {
 		followLooks(d, run, boot, onBobbin, at, deviceGapMs);
 		followMarks(d, run, boot, onBobbin, at);
