@@ -15,7 +15,9 @@ describe('a refusal of the API', () => {
 		expect(answer.headers.get('retry-after')).toBe('7');
 	});
 	it('a redirect to the sign-in page becomes 401', () => {
-		expect(asProblem(new Response(null, { status: 303, headers: { location: '/sign-in' } })).status).toBe(401);
+		const answer = asProblem(new Response(null, { status: 303, headers: { location: '/sign-in' } }));
+		expect(answer.status).toBe(401);
+		expect(answer.headers.get('www-authenticate')).toMatch(/^Bearer/);
 	});
 	it('what is a problem already, a success or unmodified stays as it is', () => {
 		const own = new Response('{}', { status: 422, headers: { 'content-type': 'application/problem+json' } });

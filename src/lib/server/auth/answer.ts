@@ -36,14 +36,22 @@ const details: Record<number, string> = {
  */
 export function asProblem(response: Response): Response {
 	const type = response.headers.get('content-type') ?? '';
-	if (type.startsWith('application/problem+json')) return response;
+	if (type.startsWith('application/problem+json')) return challenged(response);
 	if (response.status >= 300 && response.status < 400 && response.status !== 304) {
 		if (!(response.headers.get('location') ?? '').startsWith('/sign-in')) return response;
-		return problem(401, details[401]!, {}, kept(response));
+		return challenged(problem(401, details[401]!, {}, kept(response)));
 	}
 	if (response.status < 400) return response;
 	const detail = details[response.status] ?? 'Something went wrong here. Nothing of this request was kept.';
-	return problem(response.status, detail, {}, kept(response));
+	return challenged(problem(response.status, detail, {}, kept(response)));
+}
+
+/** A 401 must say how to prove who one is (RFC 9110, 15.5.2). */
+function challenged(response: Response): Response {
+	if (response.status === 401 && !response.headers.has('www-authenticate')) {
+		response.headers.set('www-authenticate', 'Bearer realm="Turnstead"');
+	}
+	return response;
 }
 
 function kept(response: Response): Headers {
@@ -54,4 +62,14 @@ function kept(response: Response): Headers {
 	}
 	for (const cookie of response.headers.getSetCookie()) headers.append('set-cookie', cookie);
 	return headers;
+}
+
+/** How long a browser waits before it asks again for a page that could not be made. */
+const AWAY_S = 5;
+
+/** A page without anything of ours but words, for when the database is away; the browser asks again by itself. */
+export function awayPage(words: string): Response {
+	const body = `<!doctype html><html lang="en"><head><meta charset="utf-8"><meta name="viewport" content="width=device-width, initial-scale=1"><title>Not just now · Turnstead</title></head><body><h1>Not just now</h1><p>${words}</p><p>This page asks again every ${AWAY_S} seconds.</p></body></html>`;
+	const headers = { 'content-type': 'text/html; charset=utf-8', 'retry-after': `${AWAY_S}`, refresh: `${AWAY_S}` };
+	return new Response(body, { status: 503, headers });
 }
