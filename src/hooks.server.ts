@@ -1,7 +1,7 @@
 import { error, redirect, type Handle, type RequestEvent, type ServerInit } from '@sveltejs/kit';
 import { building } from '$app/environment';
 import { startTurnstead, turnstead } from '$lib/server/app';
-import { asProblem, harden } from '$lib/server/auth/answer';
+import { asProblem, awayPage, harden } from '$lib/server/auth/answer';
 import { mayWrite } from '$lib/server/auth/origin';
 import { dropSession, hasSessionCookie, readSession } from '$lib/server/auth/session';
 import { findMember, type Member } from '$lib/server/db/people';
@@ -32,10 +32,9 @@ export const handle: Handle = async ({ event, resolve }) => {
 	} catch (cause) {
 		// The session is kept: the database being away signs nobody out.
 		console.error('cannot look up who asks:', cause);
-		return refuse(
-			503,
-			'The database is away just now. You are still signed in and nothing was changed. Try again in a moment.'
-		);
+		const words = 'The database is away just now. You are still signed in and nothing was changed.';
+		const page = event.request.method === 'GET' && !event.isDataRequest && !api;
+		return page ? harden(awayPage(words), { https, personal: true }) : refuse(503, words);
 	}
 	if (needsMember(event) && !event.locals.member) redirect(303, signInAddress(event));
 
