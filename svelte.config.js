@@ -15,6 +15,8 @@ export default {
 				'default-src': ['none'],
 				'script-src': ['self'],
 				'style-src': ['self'],
+				// The one style attribute allowed is that of Kit's own page announcer, by its hash: it hides that element from sight.
+				'style-src-attr': ['unsafe-hashes', 'sha256-S8qMpvofolR8Mpjy4kQvEm7m1q8clzU4dfDH0AmvZjo='],
 				'img-src': ['self', 'data:', 'blob:'],
 				'font-src': ['self'],
 				'connect-src': ['self'],
