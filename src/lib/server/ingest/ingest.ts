@@ -277,15 +277,19 @@ export class IngestCore implements Ingest {
 		if (!seat) return { ok: false, why: 'not-found' };
 		const now = this.#now();
 		seat.usedAt = this.#steady();
-		const known = seat.state.tapsDone.some(([id]) => id === tap.id);
-		if (!known) {
+		// Only a tap that is older than this seat can be known to the record alone.
+		if (!seat.taps.has(tap.id) && ageMs >= this.#steady() - seat.seatedAt) {
 			const before = await this.#tapBefore(seat, tap.id);
 			if (before === 'unknown') return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 			if (before) return { ok: true, pending: before.kind === 'tap-waiting', live: this.#show(seat) };
 		}
 		const from = movedFrom(seat.state, tap);
-		const step = takeTap(seat.state, seat.config, tap, now - ageMs, now);
+		const known = seat.taps.get(tap.id);
+		const step = known
+			? { state: seat.state, facts: [], answer: known }
+			: takeTap(seat.state, seat.config, tap, now - ageMs, now);
 		if (step.answer.ok && step.state !== seat.state) {
+			seat.rememberTap(tap.id, step.answer);
 			this.#apply(seat, step.state, step.facts, tap.id);
 			if (from) await this.#moveRun(seat, from);
 			this.#write(seat, { snapshot: this.#snapshot(seat) }, true);
@@ -657,15 +661,19 @@ export class IngestCore implements Ingest {
 
 	/** Takes over a step of the fold: numbers its facts and notes what they change in the rows of runs. */
 	#apply(seat: Seat, state: WinderState, facts: Fact[], tapId: string | null): void {
+		const before = seat.state;
 		seat.state = state;
 		if (facts.length === 0) return;
-		const changes = facts.flatMap((fact) => this.#changesOf(seat, fact));
+		const changes = facts.flatMap((fact) => this.#changesOf(seat, fact, before));
 		const numbered = facts.map((fact, i) => ({ ...fact, no: ++seat.factNo, tapId: i === 0 ? tapId : null }));
 		this.#write(seat, { facts: numbered, changes, snapshot: this.#snapshot(seat) }, tapId !== null);
 	}
 
-	#changesOf(seat: Seat, fact: Fact): RunChange[] {
-		const run = fact.runId === null ? null : runOf(seat.state, fact.runId);
+	#changesOf(seat: Seat, fact: Fact, before: WinderState): RunChange[] {
+		if (fact.runId === null) return [];
+		// A step that ends a run may bring up the next one at once: then the run stands in the state before it.
+		const now = runOf(seat.state, fact.runId);
+		const run = now ?? runOf(before, fact.runId);
 		if (!run) return [];
 		const { runId } = run;
 		const { coilId } = run.plan;
@@ -676,9 +684,10 @@ export class IngestCore implements Ingest {
 				return [{ kind: 'started', runId, at: fact.at }];
 			case 'kept':
 			case 'set-aside': {
-				const figures = figuresOf(seat.state, seat.config, runId);
+				const figures = figuresOf(now ? seat.state : before, seat.config, runId);
 				if (!figures) return [];
-				const trace = traceOf(seat.state, seat.config, run);
+				if (!now && fact.turns !== null) figures.onBobbin = fact.turns;
+				const trace = traceOf(now ? seat.state : before, seat.config, run);
 				seat.trace = { runId, stretches: trace, due: false, writtenAt: this.#steady() };
 				return [
 					{
@@ -686,10 +695,10 @@ export class IngestCore implements Ingest {
 						runId,
 						coilId,
 						state: fact.kind,
-						reason: run.setAsideReason,
+						reason: fact.kind === 'set-aside' ? String(fact.detail.reason) : null,
 						startedAt: run.startedAt,
-						endedAt: run.endedAt ?? fact.at,
-						endedBy: run.endedBy,
+						endedAt: fact.at,
+						endedBy: fact.memberId,
 						figures,
 						trace
 					}

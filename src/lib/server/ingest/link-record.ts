@@ -2,7 +2,7 @@ import type { Refusal } from '../../turnline/index.ts';
 import type { Carrier, LinkLog } from './types.ts';
 
 /** Enough to see what a winder does now; the record holds the rest. */
-const linesShownMax = 50;
+const linesShownMax = 20;
 /** A line is at most 160 bytes; noise on a wire is not, and a page shows the start of it. */
 const textShownMax = 200;
 const errorWindowMs = 10_000;
@@ -20,7 +20,9 @@ export class LinkRecord {
 	#seconds: [number, number, number][] = [];
 
 	line(at: number, text: string, verdict: LinkLog['lines'][number]['verdict'], carrier: Carrier): void {
-		this.#lines.push({ at, text: text.trim().slice(0, textShownMax), verdict });
+		// A part of a string keeps the whole of it in memory, here a whole request: a copy is made of what is shown.
+		const shown = Buffer.from(text.slice(0, textShownMax).trim(), 'latin1').toString('latin1');
+		this.#lines.push({ at, text: shown, verdict });
 		if (this.#lines.length > linesShownMax) this.#lines.shift();
 		const known = this.#carriers[carrier];
 		this.#carriers[carrier] = { lastAt: at, lines: (known?.lines ?? 0) + 1 };

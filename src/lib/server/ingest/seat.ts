@@ -1,11 +1,14 @@
 import { axisAt } from '../../winding/boot.ts';
 import type { RunCore } from '../../winding/run.ts';
 import type { LinkState, WinderConfig } from '../../winding/types.ts';
-import type { WinderState } from '../../winding/winder.ts';
+import type { TapAnswer, WinderState } from '../../winding/winder.ts';
 import type { TraceStretch } from '../db/recorder.ts';
 import type { Winder } from '../db/winders.ts';
 import { LinkRecord } from './link-record.ts';
 import { LineBucket } from './rate.ts';
+
+/** More taps than a bench sees in a day of small coils. */
+const tapsMax = 512;
 
 /** One open WebSocket of a winder, as the fold's keeper sees it. */
 export interface SeatLink {
@@ -37,6 +40,9 @@ export class Seat {
 	written: WinderState | null;
 	writtenAt = 0;
 	usedAt: number;
+	readonly seatedAt: number;
+	/** Answers of the taps made since then, the newest last; bounded. */
+	readonly taps = new Map<string, TapAnswer & { ok: true }>();
 	readonly shop: Shop;
 	readonly record = new LinkRecord();
 	readonly bucket: LineBucket;
@@ -62,7 +68,13 @@ export class Seat {
 		this.factNo = factNo;
 		this.shop = shop;
 		this.usedAt = now;
+		this.seatedAt = now;
 		this.bucket = new LineBucket(now);
+	}
+
+	rememberTap(id: string, answer: TapAnswer & { ok: true }): void {
+		this.taps.set(id, answer);
+		if (this.taps.size > tapsMax) this.taps.delete(this.taps.keys().next().value as string);
 	}
 
 	get id(): string {
