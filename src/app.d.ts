@@ -4,6 +4,11 @@ import type { Session } from '@auth/sveltekit';
 
 declare global {
 	namespace App {
+		interface Error {
+			message: string;
+			/** Under which the log tells more; only for failures of ours. */
+			id?: string;
+		}
 		interface Locals {
 			/** Who is signed in, as the database knew them when the request came; null: nobody. */
 			member: Member | null;

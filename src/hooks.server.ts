@@ -1,4 +1,11 @@
-import { error, redirect, type Handle, type RequestEvent, type ServerInit } from '@sveltejs/kit';
+import {
+	error,
+	redirect,
+	type Handle,
+	type HandleServerError,
+	type RequestEvent,
+	type ServerInit
+} from '@sveltejs/kit';
 import { building } from '$app/environment';
 import { startTurnstead, turnstead } from '$lib/server/app';
 import { asProblem, awayPage, harden } from '$lib/server/auth/answer';
@@ -40,6 +47,14 @@ export const handle: Handle = async ({ event, resolve }) => {
 
 	const response = await resolve(event);
 	return harden(api ? asProblem(response) : response, { https, personal: event.locals.member !== null });
+};
+
+/** The person sees a number, the log says what stands behind it. */
+export const handleError: HandleServerError = ({ error: cause, event, status, message }) => {
+	if (status < 500) return { message };
+	const id = crypto.randomUUID().slice(0, 8);
+	console.error(`${id}: ${event.request.method} ${event.route.id ?? event.url.pathname} failed:`, cause);
+	return { message, id };
 };
 
 /** A cookie of someone who was removed, or whose sessions were ended, is taken away. */
