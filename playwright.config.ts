@@ -13,6 +13,7 @@ export default defineConfig({
 	reporter: [['list']],
 	use: {
 		browserName: 'chromium',
+		actionTimeout: 20_000,
 		launchOptions: {
 			executablePath: '/usr/bin/chromium',
 			args: [
