@@ -20,6 +20,7 @@ export function curlRecipe(origin: string, winderId: string, linkKey: string | n
 		`{ npm run -s line -- "HI p=1 dev=by-hand b=$BOOT n=0 e=0 f=0 v=0 t=0"`,
 		`  npm run -s line -- "E b=$BOOT n=1 e=1 f=0 v=0 t=40 k=go"`,
 		`  npm run -s line -- "T b=$BOOT n=2 e=1 f=1 v=0 r=60 t=1040"`,
-		`} | curl -sS --data-binary @- -H "Authorization: Bearer $LINK_KEY" -H 'Content-Type: text/plain' ${quoted(url)}`
+		`} | curl -sS --data-binary @- -H "Authorization: Bearer $LINK_KEY" \\`,
+		`  -H 'Content-Type: text/plain' ${quoted(url)}`
 	].join('\n');
 }
