@@ -146,7 +146,7 @@ describe('standing still', () => {
 
 	it('before a start the cautions stand beside the tap, and a screen that may go dark says so', () => {
 		const waiting = run({ state: 'waiting', onBobbin: 0, startedAt: null }, still);
-		expect(show(waiting).text).toMatch(/before reaching in.*not an emergency stop/);
+		expect(show(waiting).text).toMatch(/before reaching in.*no emergency stop/);
 		expect(show(waiting, { awake: false }).messages).toEqual(['this tablet may sleep: set its screen time-out']);
 		expect(show(aView(), { awake: false }).messages).toEqual([]);
 	});
@@ -243,7 +243,7 @@ describe('kept', () => {
 	it('shows the line to copy, in the workshop’s own time', () => {
 		const model = show(kept(), { keptSeenAtMs: 10_000, timeZone: 'Europe/Berlin' });
 		expect(model).toMatchObject({ ground: 'mark', shape: 'tag', word: 'Kept', beside: 'K7Q2', status: 'Kept' });
-		expect(model.text).toBe('Copy on the coil: K7Q2 · 5,320 turns · start 11:41 · finish 11:49');
+		expect(model.text).toBe('To copy: K7Q2 · 5,320 turns · start 11:41 · finish 11:49');
 	});
 
 	it('undo cannot be pressed in the first second, so that a double tap never undoes', () => {
@@ -434,7 +434,8 @@ describe('saving', () => {
 		const model = show(run({ state: 'on-count', onBobbin: 5_320, pendingTap: 'keep' }, still));
 		expect(model.messages).toEqual(['waiting for the winder’s lines']);
 		expect(model.taps.find(({ label }) => label === 'Keep this coil')?.enabled).toBe(false);
-		expect(labels(model)).toContain('Undo');
+		expect(labels(model)).toEqual(['Keep this coil', 'Undo', 'Screen']);
+		expect(model.pedal).toBeNull();
 	});
 
 	it('a refused tap shows its reason', () => {

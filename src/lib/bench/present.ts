@@ -160,8 +160,7 @@ export const quietOptions: PresentOptions = {
 };
 
 /** Beside the tap that starts a coil, in short; the screen's own sheet has it in full. */
-export const startCaution =
-	'Stop the winder before reaching in. The stop cue is a work signal, not an emergency stop: fit a real switch.';
+export const startCaution = 'Stop it before reaching in. The cue is no emergency stop.';
 
 /** A double tap on "Keep this coil" must not land on Undo. */
 export const undoAfterMs = 1_000;
@@ -356,7 +355,7 @@ function faceOf(
 			shape: 'bobbin-empty',
 			word: 'Waiting',
 			text: 'Nothing waiting to be wound',
-			taps: turning ? [] : [go('Put coils in the queue', 'main', '/wind')]
+			taps: turning ? [] : [go('Fill the queue', 'main', '/wind')]
 		});
 	}
 	if (run.state === 'kept') return keptFace(view, run, turning, nowMs, sinceMs, options);
@@ -528,7 +527,7 @@ function keptFace(
 		word: 'Kept',
 		beside: run.sticker ?? '',
 		ahead: aheadNext(view),
-		text: run.sticker === null ? null : `Copy on the coil: ${run.sticker} · ${turnsText(run.onBobbin)}${times}`,
+		text: run.sticker === null ? null : `To copy: ${run.sticker} · ${turnsText(run.onBobbin)}${times}`,
 		taps: turning ? [] : mayUndo ? [undo, queueTap] : [queueTap],
 		pedal: mayUndo && undo.enabled ? undo : null,
 		status: 'Kept'
@@ -606,7 +605,7 @@ function questionFace(run: RunView, turning: boolean, options: PresentOptions): 
 			shown = face({
 				...asked,
 				word: 'Did you stop?',
-				text: `Pulses ended at ${turnsText(detail.at)}, at ${wholeText(detail.rpm)} rpm: the sensor may have lost its magnet`,
+				text: `Pulses ended at ${wholeText(detail.rpm)} rpm: has the sensor lost its magnet?`,
 				taps: [
 					tap('Yes, I stopped', 'main', { kind: 'stopped' }),
 					tap('No, it turned on', 'main', { kind: 'not-stopped' })
@@ -617,7 +616,7 @@ function questionFace(run: RunView, turning: boolean, options: PresentOptions): 
 			shown = face({
 				...asked,
 				word: 'Which winder?',
-				text: `${detail.otherName} turned ${turnsText(detail.turns)} for this coil too. Where is it wound?`,
+				text: `${detail.otherName} turned ${wholeText(detail.turns)} for this coil, too: wound where?`,
 				taps: [
 					tap('On this one', 'main', { kind: 'this-winder' }),
 					tap(`On ${detail.otherName}`, 'main', { kind: 'other-winder' })
@@ -655,13 +654,15 @@ function withWaitingTaps(shown: Face, run: RunView | null, options: PresentOptio
 	if (waiting.size === 0) return shown;
 	const off = (one: BenchTap | null) => (one?.act.do === 'tap' && waiting.has(one.act.tap.kind) ? null : one);
 	// A tap that waits for lines can still be taken back.
-	const undo = run?.pendingTap && !waiting.has('undo') ? [tap('Undo', 'small', { kind: 'undo' })] : [];
+	const pending = run?.pendingTap != null;
+	const undo = pending && !waiting.has('undo') ? [tap('Undo', 'small', { kind: 'undo' })] : [];
+	const taps = shown.taps.map((one) => (off(one) ? one : { ...one, enabled: false }));
 	return {
 		...shown,
-		taps: [...shown.taps.map((one) => (off(one) ? one : { ...one, enabled: false })), ...undo],
+		taps: pending ? [...taps.filter(({ enabled }) => !enabled), ...undo] : taps,
 		entry: shown.entry && waiting.has(shown.entry.tap) ? null : shown.entry,
-		pedal: off(shown.pedal),
-		pedalHeld: off(shown.pedalHeld)
+		pedal: pending ? null : off(shown.pedal),
+		pedalHeld: pending ? null : off(shown.pedalHeld)
 	};
 }
 

@@ -43,9 +43,13 @@ const farWideEm = 10.9;
 const farTallEm = 7.95;
 
 const nearRowEm = 1.5;
+/** Two lines of the near tier below the count: a question, and a remark. */
+const toldRowsEm = 2.4;
 const farRowEm = 1.16;
-/** Of the count's own size: capitals, what hangs below the line, and air. */
-const countRowEm = 1.2;
+/** Of the count's own size: from the top of its line to below its comma. */
+const countBoxEm = 0.986;
+/** Margins and the like that grow with nothing. */
+const restPx = 40;
 
 export interface Screen {
 	widthPx: number;
@@ -67,6 +71,8 @@ export interface Sizes {
 	nearPx: number;
 	farPx: number;
 	countPx: number;
+	/** From the top of the bobbin to the count's line, so that it stands still whatever is said below it. */
+	countTopPx: number;
 	/** Margin left and right, and the thickness of a flange. */
 	padPx: number;
 	flangePx: number;
@@ -124,14 +130,13 @@ export function sizesFor(screen: Screen): Sizes {
 	const footPx =
 		layout === 'wide' ? Math.round(Math.min(Math.max(tapPx, heightPx * 0.19), 1.6 * tapPx)) : Math.round(tapPx);
 	const rows = layout === 'wide' ? 1 : 3;
-	const nearRows = layout === 'wide' ? 2 : 4;
+	const nearEm = (layout === 'wide' ? nearRowEm : 2 * nearRowEm) + toldRowsEm;
 	const farRows = layout === 'wide' ? 1 : 2;
-	const otherPx = nearRows * nearRowEm * nearPx + farRows * farRowEm * farPx + rows * footPx + (rows - 1) * gapPx + 28;
+	const otherPx = nearEm * nearPx + farRows * farRowEm * farPx + rows * footPx + (rows - 1) * gapPx + restPx;
+	const bobbinPx = Math.max(heightPx - otherPx, 48);
 	// Two pixels of air on either side of the digits.
 	const innerPx = widthPx - 2 * padPx - 2 * flangePx - 4;
-	const countPx = Math.floor(
-		Math.min(innerPx / countWidthEm(Math.max(screen.digits, 1)), Math.max(heightPx - otherPx, 48) / countRowEm)
-	);
+	const countPx = Math.floor(Math.min(innerPx / countWidthEm(Math.max(screen.digits, 1)), bobbinPx / countBoxEm));
 
 	const mm = (px: number) => (px * capHeightEm) / pxPerMm;
 	return {
@@ -142,6 +147,7 @@ export function sizesFor(screen: Screen): Sizes {
 		nearPx,
 		farPx,
 		countPx,
+		countTopPx: Math.floor((bobbinPx - countBoxEm * countPx) / 2),
 		padPx,
 		flangePx,
 		tapPx,
