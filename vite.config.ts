@@ -15,7 +15,7 @@ export default defineConfig({
 				test: {
 					name: 'unit',
 					environment: 'node',
-					include: ['{src,simulator,firmware-protocol}/**/*.test.ts', 'tests/rules/**/*.test.ts']
+					include: ['{src,simulator,firmware-protocol}/**/*.test.ts', 'tests/{rules,bench}/**/*.test.ts']
 				}
 			},
 			{

@@ -102,8 +102,11 @@ function placeOf(pointer: Pointer, projectFolder: string): string {
 		: pointer.dataFolder;
 }
 
-/** A cluster for tests, in a temporary folder. `remove()` stops it and leaves nothing. */
-export async function throwawayCluster(): Promise<Cluster & { remove(): Promise<void> }> {
+/**
+ * A cluster for tests, in a temporary folder. `remove()` stops it and leaves nothing. `durable`: a commit reaches the
+ * disk, as it does in use; a measurement needs that and tests do not.
+ */
+export async function throwawayCluster({ durable = false } = {}): Promise<Cluster & { remove(): Promise<void> }> {
 	const binaries = await findBinaries();
 	const parent = reachableTempFolder();
 	await sweepThrowaways(parent, binaries);
@@ -112,7 +115,7 @@ export async function throwawayCluster(): Promise<Cluster & { remove(): Promise<
 	if (account.uid !== undefined) chmodSync(folder, 0o711);
 	writeFileSync(join(folder, 'owner'), `${process.pid} ${startTicks(process.pid)}`);
 	// Killed servers are what the tests are about, killed machines are not: what the kernel holds is kept either way.
-	const options = ['-c', 'fsync=off', '-c', 'max_connections=200'];
+	const options = ['-c', `fsync=${durable ? 'on' : 'off'}`, '-c', 'max_connections=200'];
 	const dataFolder = join(folder, 'postgres');
 	const cluster = await open({
 		binaries,
