@@ -410,7 +410,7 @@ function trimLog(log: string): void {
 
 function whyNot(output: string): string {
 	const last = output.trim().split('\n').slice(-6).join('\n  ');
-	if (/No space left on device|could not write|disk full/i.test(output)) {
+	if (/No space left on device|Check free disk space|could not (write|extend)|disk full/i.test(output)) {
 		return `The disk is full: make room, then start again. What was stored is kept. PostgreSQL said:\n  ${last}`;
 	}
 	if (/Permission denied/i.test(output)) {
