@@ -1,5 +1,15 @@
 import { describe, expect, it } from 'vitest';
-import { agoText, clockText, durationText, offText, sheetTimeText, turnsText, whenText, wholeText } from './format.ts';
+import {
+	agoText,
+	clockText,
+	durationText,
+	offText,
+	recentText,
+	sheetTimeText,
+	turnsText,
+	whenText,
+	wholeText
+} from './format.ts';
 
 describe('figures', () => {
 	it('are grouped by thousands', () => {
@@ -27,6 +37,13 @@ describe('times', () => {
 		expect(whenText(at, 'America/New_York')).toBe('30 Jun 2026 20:30');
 		expect(clockText(at, 'Europe/London')).toBe('01:30:09');
 		expect(sheetTimeText(at, 'UTC')).toBe('2026-07-01 00:30:09');
+	});
+
+	it('of this year do without the year', () => {
+		// Half past midnight UTC on 1 January is still the old year in New York.
+		const at = Date.UTC(2027, 0, 1, 0, 30);
+		expect(recentText(at, 'UTC', 2027)).toBe('1 Jan 00:30');
+		expect(recentText(at, 'America/New_York', 2027)).toBe('31 Dec 2026 19:30');
 	});
 
 	it('at midnight are 00, not 24', () => {

@@ -88,6 +88,12 @@ export function whenText(at: Date | number, timeZone: string): string {
 	return `${day} ${months[month - 1]} ${year} ${two(hour)}:${two(minute)}`;
 }
 
+/** The same without the year where that is `thisYear`: "2 Dec 10:41". */
+export function recentText(at: Date | number, timeZone: string, thisYear: number): string {
+	const { year, month, day, hour, minute } = wallTime(at, timeZone);
+	return `${day} ${months[month - 1]}${year === thisYear ? '' : ` ${year}`} ${two(hour)}:${two(minute)}`;
+}
+
 /** "10:41:09" on the workshop's clock. */
 export function clockText(at: Date | number, timeZone: string): string {
 	const { hour, minute, second } = wallTime(at, timeZone);

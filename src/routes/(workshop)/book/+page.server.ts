@@ -1,3 +1,4 @@
+import { wallTime } from '$lib/format';
 import { guard } from '$lib/server/auth/guard';
 import { bookPeople, bookTotals, listBook } from '$lib/server/db/book';
 import { wholeBook } from '$lib/book-filter';
@@ -28,6 +29,7 @@ export const load: PageServerLoad = async ({ locals, url }) => {
 	return {
 		...found,
 		timeZone,
+		thisYear: wallTime(Date.now(), timeZone).year,
 		sort: query.sort,
 		descending: query.descending,
 		typed: query.typed,
