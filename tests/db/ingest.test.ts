@@ -515,6 +515,38 @@ describe('a database that takes nothing', () => {
 		expect(await keptLines()).toHaveLength(1);
 	});
 
+	it('and breaks off after a coil was taken, but before the answer, loses no coil', async () => {
+		let breaks = true;
+		const broken = new Proxy(db.app, {
+			get(target, name) {
+				if (name !== 'transaction') return Reflect.get(target, name, target) as unknown;
+				return () => ({
+					async execute(work: Parameters<ReturnType<typeof target.transaction>['execute']>[0]) {
+						const done = await target.transaction().execute(work);
+						if (breaks && done !== null && typeof done === 'object' && 'sticker' in done) {
+							breaks = false;
+							throw new Error('Connection terminated unexpectedly');
+						}
+						return done;
+					}
+				});
+			}
+		});
+		const own = makeIngest(broken, clock).ingest;
+		running.push(own);
+		const neck = await queueCoil(db, shop.id, 'neck');
+		const counter = new Counter(clock, '5C0E91A7');
+		await send([counter.hi()], own);
+		expect((await view(own)).run).toBeNull();
+		expect(await coilState(neck.id)).toBe('on-bench');
+		clock.pass(2_000);
+		counter.t += 2_000;
+		await send([counter.tick(0, 100, 0)], own);
+		await own.queueChanged(shop.id);
+		expect((await view(own)).run).toMatchObject({ coil: { coilId: neck.id }, state: 'waiting' });
+		expect(await runs()).toHaveLength(1);
+	});
+
 	it('for one winder’s rows does not hold up the others', async () => {
 		const second = await makeWinder(db, shop.id, 'w-02');
 		const refused = start({

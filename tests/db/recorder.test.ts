@@ -133,9 +133,23 @@ describe('a batch', () => {
 	it('is written as a whole or not at all, over all its workshops', async () => {
 		const other = await makeShop(db);
 		const good = write({ lines: [line(1)], facts: [fact(1)] });
-		const bad = write({ workshopId: other.id, winderId: other.winderId, facts: [fact(1), fact(1)] });
-		await expect(writeBatch(db.app, [good, bad])).rejects.toMatchObject({ code: '23505' });
+		const bad = write({ workshopId: other.id, winderId: other.winderId, facts: [fact(1, { memberId: randomUUID() })] });
+		await expect(writeBatch(db.app, [good, bad])).rejects.toMatchObject({ code: '23503' });
 		expect(await lineCount()).toBe(0);
+	});
+
+	it('written twice, as after a connection that broke at the commit, is there once', async () => {
+		const { runId, coilId } = await takeRun();
+		const back = { kind: 'put-back', runId, coilId } as const;
+		const batch = [write({ lines: [line(1)], cursors: [cursor(1)], facts: [fact(1, { runId })], changes: [back] })];
+		await writeBatch(db.app, batch);
+		// Meanwhile another bench took the coil.
+		const second = await makeWinder(db, shop.id, 'w-02');
+		await inWorkshop(db.app, shop.id, (trx) => takeNextCoil(trx, shop.id, second.winderId, new Date(at)));
+		await writeBatch(db.app, batch);
+		const coil = await db.owner.selectFrom('coil').selectAll().where('id', '=', coilId).executeTakeFirstOrThrow();
+		expect(coil).toMatchObject({ state: 'on-bench', winder_id: second.winderId });
+		expect(await lineCount()).toBe(1);
 	});
 
 	it('cannot write into another workshop than it names', async () => {

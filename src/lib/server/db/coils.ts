@@ -258,8 +258,8 @@ export async function takeNextCoil(
 	return { runId: run.id, plan: toPlan(toCoil(row)), sticker };
 }
 
-/** What was to be wound is still to be wound: first in the queue again. */
-export async function backToHead(trx: Trx, workshopId: string, coilId: string): Promise<void> {
+/** What was to be wound is still to be wound: first in the queue again. Nothing, when it is no more at that winder. */
+export async function backToHead(trx: Trx, workshopId: string, winderId: string, coilId: string): Promise<void> {
 	await trx
 		.updateTable('coil')
 		.set((eb) => ({
@@ -273,6 +273,8 @@ export async function backToHead(trx: Trx, workshopId: string, coilId: string): 
 		}))
 		.where('workshop_id', '=', workshopId)
 		.where('id', '=', coilId)
+		.where('state', '=', 'on-bench')
+		.where('winder_id', '=', winderId)
 		.execute();
 }
 

@@ -94,7 +94,9 @@ type Trx = Transaction<Database>;
 
 /**
  * Writes a batch over any number of winders and workshops: all of it or nothing. When it returns, it is on disk.
- * Lines and events that are there already stay as they are.
+ *
+ * A connection may break after the commit and before its answer, so that nobody knows whether it was written. Writing the
+ * same batch again therefore changes nothing: what is there already stays as it is.
  */
 export async function writeBatch(db: Kysely<Database>, writes: WinderWrite[]): Promise<void> {
 	const byWorkshop = new Map<string, WinderWrite[]>();
@@ -178,7 +180,8 @@ async function insertFacts(trx: Trx, workshopId: string, writes: WinderWrite[]):
 			${rows.map((row) => (row.turns === null ? null : Math.round(row.turns)))}::integer[],
 			${rows.map((row) => JSON.stringify(row.detail))}::text[], ${rows.map((row) => row.memberId)}::uuid[],
 			${rows.map((row) => row.tapId)}::uuid[]
-		) as row (winder_id, no, run_id, kind, at_ms, turns, detail, member_id, tap_id)`.execute(trx);
+		) as row (winder_id, no, run_id, kind, at_ms, turns, detail, member_id, tap_id)
+		on conflict (workshop_id, winder_id, no) do nothing`.execute(trx);
 }
 
 async function upsertSnapshots(trx: Trx, workshopId: string, writes: WinderWrite[]): Promise<void> {
@@ -224,7 +227,7 @@ async function changeRun(trx: Trx, workshopId: string, winderId: string, change:
 				.execute();
 			// A coil that was set aside is still to be wound.
 			if (change.state === 'kept') await setCoil(trx, workshopId, change.coilId, 'wound', winderId);
-			else await backToHead(trx, workshopId, change.coilId);
+			else await backToHead(trx, workshopId, winderId, change.coilId);
 			await writeTrace(trx, workshopId, winderId, change.runId, change.trace);
 			return;
 		}
@@ -258,7 +261,7 @@ async function changeRun(trx: Trx, workshopId: string, winderId: string, change:
 			await setCoil(trx, workshopId, change.coilId, 'on-bench', change.winderId);
 			return;
 		case 'put-back':
-			await backToHead(trx, workshopId, change.coilId);
+			await backToHead(trx, workshopId, winderId, change.coilId);
 			// What was noted of it stays with the winder, so that the numbers of its facts keep no gap.
 			await trx
 				.updateTable('fact')

@@ -425,7 +425,8 @@ export class IngestCore implements Ingest {
 			shop.again ||= look;
 			return shop.giving;
 		}
-		if (!look && (shop.waiting === 0 || shop.giveAt > this.#steady())) return Promise.resolve();
+		const idle = shop.waiting === 0 && shop.unsure.size === 0;
+		if (!look && (idle || shop.giveAt > this.#steady())) return Promise.resolve();
 		shop.giving = this.#giveAll(shop, heard, look).finally(() => {
 			shop.giving = null;
 			if (shop.again) {
@@ -438,15 +439,18 @@ export class IngestCore implements Ingest {
 
 	async #giveAll(shop: Shop, heard: Seat | null, look: boolean): Promise<void> {
 		try {
+			for (const seat of [...shop.unsure]) await this.#adopt(seat);
 			if (look) await this.#readQueue(shop);
 			const passed = new Set<Seat>();
 			while (shop.waiting > 0) {
 				const seat = this.#benchesInTurn(shop, heard).find((idle) => !passed.has(idle));
 				if (!seat) break;
 				passed.add(seat);
+				shop.unsure.add(seat);
 				const taken = await inWorkshop(this.#db, shop.id, (trx) =>
 					takeNextCoil(trx, shop.id, seat.id, new Date(this.#now()))
 				);
+				shop.unsure.delete(seat);
 				if (taken) this.#putOnBench(seat, taken);
 				await this.#readQueue(shop);
 			}
@@ -486,6 +490,16 @@ export class IngestCore implements Ingest {
 		this.#write(seat, { snapshot: this.#snapshot(seat) }, true);
 		this.#tellLinks(seat);
 		this.#show(seat);
+	}
+
+	/** Takes over runs that the rows give to a bench and its state does not know: their taking broke off half-way. */
+	async #adopt(seat: Seat): Promise<void> {
+		const saved = await inWorkshop(this.#db, seat.shop.id, (trx) => readWinder(trx, seat.shop.id, seat.id));
+		seat.shop.unsure.delete(seat);
+		// What this bench has closed or given back stands open in the rows until its commit.
+		if (this.#commit.pendingChanges(seat.shop.id, seat.id)) return void seat.shop.unsure.add(seat);
+		const held = runIdsOf(seat.state);
+		for (const run of saved.openRuns) if (!held.includes(run.runId)) this.#putOnBench(seat, run);
 	}
 
 	async #readQueue(shop: Shop): Promise<void> {
@@ -599,6 +613,7 @@ export class IngestCore implements Ingest {
 
 	#putAway(seat: Seat): void {
 		this.#seats.delete(`${seat.shop.id}/${seat.id}`);
+		seat.shop.unsure.delete(seat);
 		this.#live.forget(seat.shop.id, seat.id);
 		const left = [...this.#seats.values()].some((other) => other.shop === seat.shop);
 		if (!left) this.#shops.delete(seat.shop.id);
@@ -646,14 +661,14 @@ export class IngestCore implements Ingest {
 		}
 		let shop = this.#shops.get(workshopId);
 		if (!shop) {
-			shop = { id: workshopId, next: null, waiting: 0, giving: null, again: false, giveAt: 0 };
+			shop = { id: workshopId, next: null, waiting: 0, giving: null, again: false, giveAt: 0, unsure: new Set() };
 			this.#shops.set(workshopId, shop);
 		}
 		shop.next = head.next;
 		shop.waiting = head.waiting;
 		const seat = new Seat(winder, state, saved.factNo, shop, this.#steady());
 		this.#seats.set(`${workshopId}/${winder.id}`, seat);
-		// A run whose taking was written, but not yet that this bench has it: the server ended between the two.
+		// The server may have ended after a coil was taken and before this bench had it.
 		const held = runIdsOf(state);
 		for (const run of saved.openRuns) if (!held.includes(run.runId)) this.#putOnBench(seat, run);
 		return seat;

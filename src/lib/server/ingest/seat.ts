@@ -28,6 +28,8 @@ export interface Shop {
 	again: boolean;
 	/** After a failure nothing is taken before this. */
 	giveAt: number;
+	/** Benches for which a coil may have been taken though the answer never came. */
+	unsure: Set<Seat>;
 }
 
 /** One winder in memory: its state, and what is known of its link. */
