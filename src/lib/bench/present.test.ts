@@ -278,7 +278,7 @@ describe('questions', () => {
 		const model = show(asked({ kind: 'jump', keep: 3_187, take: 8_187 }));
 		expect(model).toMatchObject({ ground: 'look', shape: 'fork', word: 'Count jumped' });
 		expect(model.text).toBe('Count jumped – take 8,187 / keep 3,187');
-		expect(labels(model)).toEqual(['Take 8,187', 'Keep 3,187', 'Screen']);
+		expect(labels(model)).toEqual(['Take 8,187', 'Keep 3,187']);
 		expect(model.pedal).toBeNull();
 	});
 
@@ -286,7 +286,7 @@ describe('questions', () => {
 		const detail = { kind: 'restarted', at: 3_187, uncertainTurns: 9 } as const;
 		const model = show(asked(detail));
 		expect(model.text).toBe('Winder restarted at 3,187 – up to 9 turns uncertain');
-		expect(labels(model)).toEqual(['Go on from 3,187', 'Type the count', 'Set aside', 'Screen']);
+		expect(labels(model)).toEqual(['Go on from 3,187', 'Type the count', 'Set aside']);
 		expect(show(asked({ ...detail, uncertainTurns: null })).text).toContain('not known');
 	});
 
@@ -303,19 +303,19 @@ describe('questions', () => {
 	it('pulses that ended at speed are a question, never a calm stop', () => {
 		const model = show(asked({ kind: 'did-you-stop', at: 3_412, rpm: 452 }));
 		expect(model.word).toBe('Did you stop?');
-		expect(labels(model)).toEqual(['Yes, I stopped', 'No, it turned on', 'Screen']);
+		expect(labels(model)).toEqual(['Yes, I stopped', 'No, it turned on']);
 	});
 
 	it('two winders on one coil are told apart by the maker', () => {
 		const model = show(asked({ kind: 'which-winder', otherWinderId: 'w2', otherName: 'w-02', turns: 12 }));
-		expect(labels(model)).toEqual(['On this one', 'On w-02', 'Screen']);
+		expect(labels(model)).toEqual(['On this one', 'On w-02']);
 	});
 
 	it('a snapped wire asks for the turn, with the best guess to step or type', () => {
 		const model = show(asked({ kind: 'snapped', guess: 2_950, counted: 2_990 }));
 		expect(model.entry).toMatchObject({ value: 2_950, min: 0, max: 2_990, tap: 'snap-at' });
 		expect(model.text).toBe('Wire left at turn … – counted 2,990');
-		expect(labels(model)).toEqual(['The wire held', 'Screen']);
+		expect(labels(model)).toEqual(['The wire held']);
 	});
 
 	it('a question offers no answer while the spindle turns', () => {

@@ -299,7 +299,9 @@ export function present(
 	if (!turning && options.access === 'ok') {
 		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first.
 		if (options.sound === 'ask' && run?.question == null) shown = { ...shown, ...soundQuestion };
-		shown = { ...shown, taps: [...shown.taps, screenTap] };
+		// Beside answers there is nothing else to touch.
+		const asking = run?.question != null || options.asking !== null;
+		if (!asking) shown = { ...shown, taps: [...shown.taps, screenTap] };
 	}
 
 	const messages = messagesOf(view, run, ageMs, link, turning, options);

@@ -47,7 +47,7 @@ const nearRowEm = 1.5;
 const toldRowsEm = 2.4;
 const farRowEm = 1.16;
 /** Of the count's own size: from the top of its line to below its comma. */
-const countBoxEm = 0.986;
+const countBoxEm = 1.03;
 /** Margins and the like that grow with nothing. */
 const restPx = 40;
 
