@@ -217,8 +217,7 @@ describe('standing still', () => {
 			'wound unevenly',
 			'wrong wire or bobbin',
 			'only a trial',
-			'Go back',
-			'Screen'
+			'Go back'
 		]);
 		expect(model.taps[1]!.act).toEqual({ do: 'tap', tap: { kind: 'set-aside', reason: 'wound unevenly' } });
 		expect(labels(show(run({ state: 'winding' }), { asking: 'set-aside' }))).toEqual(['wire snapped']);
