@@ -1,0 +1,41 @@
+import { defineConfig, mergeConfig } from 'vitest/config';
+import viteConfig from './vite.config.ts';
+
+/** Apart from vite.config.ts, so that a build needs no test runner and a change here makes no new build. */
+export default mergeConfig(
+	viteConfig,
+	defineConfig({
+		test: {
+			projects: [
+				{
+					extends: true,
+					test: {
+						name: 'unit',
+						environment: 'node',
+						include: ['{src,simulator,firmware-protocol}/**/*.test.ts', 'tests/{rules,bench}/**/*.test.ts']
+					}
+				},
+				{
+					extends: true,
+					test: {
+						name: 'database',
+						environment: 'node',
+						include: ['tests/db/**/*.test.ts'],
+						globalSetup: ['tests/db/global-setup.ts']
+					}
+				},
+				{
+					extends: true,
+					test: {
+						// Kills servers and databases: one file at a time, against the build.
+						name: 'faults',
+						environment: 'node',
+						include: ['tests/faults/**/*.test.ts'],
+						globalSetup: ['tests/db/global-setup.ts'],
+						fileParallelism: false
+					}
+				}
+			]
+		}
+	})
+);
