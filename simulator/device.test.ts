@@ -1,5 +1,5 @@
 import fc from 'fast-check';
-import { describe, expect, it } from 'vitest';
+import { describe, expect, it, vi } from 'vitest';
 import {
 	formatLine,
 	parseDeviceLine,
@@ -10,6 +10,9 @@ import {
 } from '../src/lib/turnline/index.ts';
 import { Device, ordinaryDevice, type DeviceTraits } from './device.ts';
 import { randomFrom } from './random.ts';
+
+// Nothing here is about pace: a busy machine may take its time.
+vi.setConfig({ testTimeout: 120_000 });
 
 function newDevice(traits: Partial<DeviceTraits> = {}, seed = 1) {
 	const events: Event[] = [];

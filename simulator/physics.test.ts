@@ -1,8 +1,11 @@
 import fc from 'fast-check';
-import { describe, expect, it } from 'vitest';
+import { describe, expect, it, vi } from 'vitest';
 import { Counter } from './counter.ts';
 import { handsOff, ordinarySensor, ordinarySpindle, Sensor, Spindle, type Drive, type Edge } from './physics.ts';
 import { randomFrom } from './random.ts';
+
+// Nothing here is about pace: a busy machine may take its time.
+vi.setConfig({ testTimeout: 120_000 });
 
 const stepMs = 5;
 const pedal = (share: number): Drive => ({ ...handsOff, pedal: share });

@@ -1,18 +1,21 @@
 import http, { type IncomingMessage, type ServerResponse } from 'node:http';
 import type { AddressInfo } from 'node:net';
-import { afterEach, describe, expect, it } from 'vitest';
+import { afterEach, describe, expect, it, vi } from 'vitest';
 import { WebSocketServer, type WebSocket } from 'ws';
 import { formatLine, parseDeviceLine, type DeviceLine } from '../src/lib/turnline/index.ts';
 import { isLoopback, runSimulation, startSimulation, type SimulationOptions } from './run.ts';
 import type { TruthEntry } from './winder.ts';
+
+// Nothing here is about pace: a busy machine may take its time.
+vi.setConfig({ testTimeout: 120_000 });
 
 /** A small host on loopback: stores, acknowledges without a gap, and sends each boot one plan. */
 class Host {
 	readonly lines: DeviceLine[] = [];
 	readonly messages: number[] = [];
 	readonly authorisations = new Set<string | undefined>();
-	/** Answers to give before the batch is taken. */
-	readonly refusals: { status: number; retryAfter?: string }[] = [];
+	/** Answers to give before a batch is taken; `lines`: only to a batch with lines, not to a poll. */
+	readonly refusals: { status: number; retryAfter?: string; lines?: true }[] = [];
 	readonly bodies: string[] = [];
 	readonly sockets = new Set<WebSocket>();
 	onLine: (line: DeviceLine) => void = () => {};
@@ -96,7 +99,7 @@ class Host {
 		for await (const part of request) body += String(part);
 		this.authorisations.add(request.headers.authorization);
 		this.bodies.push(body);
-		const refusal = this.refusals.shift();
+		const refusal = this.refusals[0]?.lines && body === '' ? undefined : this.refusals.shift();
 		if (refusal) {
 			response.writeHead(refusal.status, refusal.retryAfter === undefined ? {} : { 'retry-after': refusal.retryAfter });
 			response.end();
@@ -211,12 +214,12 @@ describe('a link that ends', () => {
 		host.onLine = (line) => {
 			if (line.verb !== 'E' || refusedAt >= 0) return;
 			refusedAt = host.bodies.length;
-			host.refusals.push({ status: 429, retryAfter: '0' }, { status: 503, retryAfter: '0' });
+			host.refusals.push({ status: 429, retryAfter: '0', lines: true }, { status: 503, retryAfter: '0', lines: true });
 		};
 		const result = await simulation.done;
 		expect(result.allAcknowledged).toBe(true);
-		const [first, second, third] = host.bodies.slice(refusedAt);
-		expect(first).not.toBe('');
+		const [first, second, third] = host.bodies.slice(refusedAt).filter((body) => body !== '');
+		expect(first).toBeDefined();
 		expect(second).toBe(first);
 		expect(third).toBe(first);
 	});

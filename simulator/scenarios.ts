@@ -47,9 +47,13 @@ export const scenarios = {
 	'snapped-wire': scenario('the wire snaps in the middle of the coil and the spindle runs on empty for a moment', {
 		mishap: 'snap'
 	}),
-	'magnet-fell-off': scenario('the magnet of the sensor falls off at speed; the maker notices and fits it again', {
-		mishap: 'magnet'
-	})
+	// Faster than that, ticks are so far apart in the winder's own time that nobody could tell a coast-down from its absence.
+	'magnet-fell-off': scenario(
+		'the magnet of the sensor falls off at speed; the maker fits it again (to see it, speed-up at most 5)',
+		{
+			mishap: 'magnet'
+		}
+	)
 } satisfies Record<string, Scenario>;
 
 export type ScenarioName = keyof typeof scenarios;

