@@ -285,6 +285,7 @@ describe('a coil', () => {
 
 		await send([counter.tick(0, 1000, 0)]);
 		expect(await coilState(bridge.id)).toBe('on-bench');
+		expect(await view()).toMatchObject({ run: { state: 'kept' }, next: { name: 'bridge', target: 100 }, waiting: 1 });
 		clock.pass(11_000);
 		counter.t += 11_000;
 		ingest.tick();
@@ -570,6 +571,39 @@ describe('a database that takes nothing', () => {
 		expect(bad).toMatchObject({ ok: false, why: 'not-saved' });
 		expect(await view(refused)).toMatchObject({ saving: true });
 		expect(await view(refused, second.winderId)).toMatchObject({ saving: false });
+	});
+});
+
+describe('a winder nobody sends to, taps or watches', () => {
+	it('leaves the memory after a while and comes back as it was', async () => {
+		await queueCoil(db, shop.id, 'neck');
+		const counter = new Counter(clock, '5C0E91A7');
+		await send([counter.hi(), ...counter.wind(30)]);
+		const before = await view();
+		clock.pass(1_001);
+		ingest.tick();
+		await ingest.flush();
+		clock.pass(11 * 60_000);
+		ingest.tick();
+		expect(live.latest(shop.id, shop.winderId)).toBeNull();
+		expect(await view()).toMatchObject({
+			forward: 30,
+			link: 'no-signal',
+			run: { runId: before.run?.runId, turns: 30, windingMs: before.run?.windingMs }
+		});
+	});
+
+	it('stays while a screen watches it, and is told when its signal is lost', async () => {
+		const counter = new Counter(clock, '5C0E91A7');
+		await send([counter.hi(), counter.tick(0, 100, 0)]);
+		const watcher = live.open(shop.id, shop.winderId);
+		expect(await watcher.next()).toMatchObject({ view: { link: 'live' } });
+		const coming = watcher.next();
+		clock.pass(11 * 60_000);
+		ingest.tick();
+		expect(await coming).toMatchObject({ view: { link: 'no-signal', forward: 0 } });
+		expect(live.latest(shop.id, shop.winderId)).not.toBeNull();
+		watcher.end();
 	});
 });
 

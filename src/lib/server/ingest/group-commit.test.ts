@@ -131,6 +131,15 @@ describe('a group commit', () => {
 		slow.stop();
 	});
 
+	it('that hangs is no saving', async () => {
+		const hung = new GroupCommit({ write: () => new Promise(() => {}), onSaved: () => {}, onFailed: () => {} });
+		void hung.add('shop', 'a', { lines: [line(1)] }, true);
+		await vi.advanceTimersByTimeAsync(1_000);
+		expect(hung.saving('shop', 'a')).toBe(true);
+		await vi.advanceTimersByTimeAsync(3_000);
+		expect(hung.saving('shop', 'a')).toBe(false);
+	});
+
 	it('writes the newest cursor and snapshot of several', async () => {
 		const seen: WinderWrite[] = [];
 		const own = new GroupCommit({

@@ -7,6 +7,8 @@ const gatherLinesMax = 200;
 /** After a failed commit the next try comes after this, doubled each time up to the second figure. */
 const retryMsMin = 250;
 const retryMsMax = 5_000;
+/** A write that takes longer than this is, for whoever looks at the bench, none. */
+const slowMsMax = 3_000;
 /**
  * Lines and facts one winder may hold in memory while nothing can be saved. Thinned lines come at about two a second, so
  * this is some three hours; past it the winder keeps its lines itself.
@@ -27,6 +29,8 @@ class Journal {
 	readonly write: WinderWrite;
 	failures = 0;
 	retryAt = 0;
+	/** When its writing began. */
+	writingAt = Infinity;
 	/** When it is due, on the clock that nobody sets: the first thing in it has waited long enough, or a person waits. */
 	dueAt = Infinity;
 	readonly committed: Promise<void>;
@@ -133,10 +137,12 @@ export class GroupCommit {
 		return some(this.#gathering) || some(this.#writing);
 	}
 
-	/** false while the last try to save this winder failed. */
+	/** false while the last try to save this winder failed, or the one going on takes very long. */
 	saving(workshopId: string, winderId: string): boolean {
 		const key = `${workshopId}/${winderId}`;
-		return (this.#gathering.get(key)?.failures ?? 0) === 0 && (this.#writing.get(key)?.failures ?? 0) === 0;
+		const writing = this.#writing.get(key);
+		if (writing && performance.now() - writing.writingAt > slowMsMax) return false;
+		return (this.#gathering.get(key)?.failures ?? 0) === 0 && (writing?.failures ?? 0) === 0;
 	}
 
 	/** Writes what is there now, whatever its time. Resolves after one try; true when nothing is left. */
@@ -186,6 +192,7 @@ export class GroupCommit {
 			if (!all && journal.retryAt > now) continue;
 			batch.push(journal);
 			this.#gathering.delete(key);
+			journal.writingAt = now;
 			this.#writing.set(key, journal);
 		}
 		this.#lines = 0;

@@ -608,7 +608,8 @@ export class IngestCore implements Ingest {
 	#looksDifferent(seat: Seat, now: number): boolean {
 		const boot = seat.state.boots[0];
 		const link = linkStateOf(boot ? Math.max(0, now - boot.lastAt) : null, boot?.turning ?? false);
-		return link !== seat.shown.link || seat.state !== seat.shown.state;
+		const saving = this.#commit.saving(seat.shop.id, seat.id);
+		return link !== seat.shown.link || seat.state !== seat.shown.state || saving !== seat.shown.saving;
 	}
 
 	#putAway(seat: Seat): void {
@@ -776,6 +777,7 @@ export class IngestCore implements Ingest {
 		const view = viewOf(seat.state, seat.config, now);
 		const unsaved = this.#commit.unsavedFacts(seat.shop.id, seat.id);
 		const saving = this.#commit.saving(seat.shop.id, seat.id);
+		const { upNext } = seat.state;
 		seat.shown = { link: view.link, unsaved, saving, state: seat.state };
 		return this.#live.publish(seat.shop.id, {
 			...view,
@@ -784,8 +786,9 @@ export class IngestCore implements Ingest {
 			winderName: seat.winder.name,
 			unsaved,
 			saving,
-			next: seat.shop.next,
-			waiting: seat.shop.waiting
+			// While a kept coil can still be undone, the one after it lies ready on this bench already.
+			next: upNext ? { name: upNext.plan.name, target: upNext.plan.target } : seat.shop.next,
+			waiting: seat.shop.waiting + (upNext ? 1 : 0)
 		});
 	}
 
