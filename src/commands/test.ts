@@ -28,6 +28,7 @@ const CHROMIUM = '/usr/bin/chromium';
 const bin = (name: string): string => join(projectFolder, 'node_modules', '.bin', name);
 
 let current: ChildProcess | null = null;
+let brokenOff = false;
 
 /** Runs one tool and lets it print. Its group is its own, so that it can be ended with all it started. */
 function tool(name: string, args: string[], env: Record<string, string> = {}): Promise<number> {
@@ -37,7 +38,8 @@ function tool(name: string, args: string[], env: Record<string, string> = {}): P
 		child.on('error', reject);
 		child.on('exit', (code) => {
 			current = null;
-			resolve(code ?? 1);
+			// Broken off: the next step must not begin while what was started is taken away.
+			if (!brokenOff) resolve(code ?? 1);
 		});
 	});
 }
@@ -132,6 +134,8 @@ async function main(soak: boolean): Promise<Count> {
 	};
 	for (const signal of ['SIGINT', 'SIGTERM'] as const) {
 		process.on(signal, () => {
+			if (brokenOff) return;
+			brokenOff = true;
 			if (current?.pid !== undefined) process.kill(-current.pid, 'SIGTERM');
 			void clean().finally(() => process.exit(130));
 		});
