@@ -20,9 +20,11 @@ export async function up(db: Kysely<never>): Promise<void> {
 			end if;
 		exception when duplicate_object or unique_violation then null;
 		end $$`);
+	// From PostgreSQL 16 on, who makes a role is a member of it without the right to SET ROLE to it.
 	await run(`
 		do $$ begin
-			if not pg_has_role(current_user, 'turnstead_app', 'member') then
+			if not pg_has_role(current_user, 'turnstead_app',
+				case when current_setting('server_version_num')::int >= 160000 then 'set' else 'member' end) then
 				execute format('grant turnstead_app to %I', current_user);
 			end if;
 		exception when unique_violation then null;
