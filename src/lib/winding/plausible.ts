@@ -57,6 +57,8 @@ export interface PulseWindow {
 
 /** Long enough that a turn more or less does not matter. */
 export const pulseWindowMs = 2_000;
+/** Speeds said in that time: of fewer the mean says little, as when simulated time runs ahead of the lines. */
+export const pulseSpeedsMin = 8;
 
 /**
  * Speed counted against speed said: 2, ½ or 4 when the pulses per turn are set wrong, else null.
@@ -64,7 +66,7 @@ export const pulseWindowMs = 2_000;
 export function pulsesOff(window: PulseWindow, t: number, turns: number): number | null {
 	const elapsedMs = t - window.t;
 	const said = window.rpmCount > 0 ? window.rpmSum / window.rpmCount : 0;
-	if (elapsedMs < pulseWindowMs || said < 30) return null;
+	if (elapsedMs < pulseWindowMs || window.rpmCount < pulseSpeedsMin || said < 30) return null;
 	const counted = (Math.abs(turns - window.turns) / elapsedMs) * 60_000;
 	for (const factor of [2, 0.5, 4]) {
 		if (Math.abs(counted / (said * factor) - 1) < 0.12) return factor;

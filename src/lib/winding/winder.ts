@@ -20,7 +20,14 @@ import {
 } from './boot.ts';
 import { lookAfter, lookPassedAfterTurns, rearmTurns } from './cues.ts';
 import { linkStateOf } from './link.ts';
-import { endedAtSpeed, pulsesOff, pulseWindowMs, turnsPossible, type PulseWindow } from './plausible.ts';
+import {
+	endedAtSpeed,
+	pulsesOff,
+	pulseSpeedsMin,
+	pulseWindowMs,
+	turnsPossible,
+	type PulseWindow
+} from './plausible.ts';
 import {
 	addMove,
 	copyRun,
@@ -586,7 +593,7 @@ function checkPulses(d: Draft, boot: BootState, point: Point): void {
 	// Speeding up or slowing down says nothing about pulses.
 	const mean = next.rpmSum / next.rpmCount;
 	if (next.rpmCount > 2 && Math.abs(rpm - mean) > mean * 0.25) d.s.pulse = null;
-	else if (point.t - next.t >= pulseWindowMs) {
+	else if (point.t - next.t >= pulseWindowMs && next.rpmCount >= pulseSpeedsMin) {
 		const factor = pulsesOff(next, point.t, turns);
 		d.s.pulse = { t: point.t, turns, rpmSum: 0, rpmCount: 0 };
 		if (factor !== null) {
