@@ -1,9 +1,8 @@
 import type { IncomingMessage } from 'node:http';
 import type { Duplex } from 'node:stream';
-import { sql, type Kysely } from 'kysely';
 import { connect } from './db/connect.ts';
-import { migrationState } from './db/migrate.ts';
-import type { Database } from './db/schema.ts';
+import { databaseHealth } from './db/health.ts';
+import type { Db } from './db/schema.ts';
 import { env } from './env.ts';
 import { IngestCore } from './ingest/ingest.ts';
 import { LinkKeys } from './ingest/keys.ts';
@@ -13,7 +12,7 @@ import { createLiveHub, type LiveHub } from './live/hub.ts';
 
 /** The running program: one a process, whichever copy of a module asks for it. */
 export interface Turnstead {
-	db: Kysely<Database>;
+	db: Db;
 	ingest: Ingest;
 	live: LiveHub;
 	keys: LinkKeys;
@@ -45,7 +44,7 @@ export async function startTurnstead(): Promise<Turnstead> {
 }
 
 /** The program on a database connected as turnstead_app. Nothing is asked of the database before the first request. */
-export function makeTurnstead(db: Kysely<Database>): Turnstead {
+export function makeTurnstead(db: Db): Turnstead {
 	const live = createLiveHub();
 	const keys = new LinkKeys(db);
 	const ingest = new IngestCore({ db, live, onConfigChanged: (winderId) => keys.forget(winderId) });
@@ -69,23 +68,8 @@ export function makeTurnstead(db: Kysely<Database>): Turnstead {
 		live,
 		keys,
 		upgrade: links.upgrade,
-		health: () => health(db),
+		health: () => databaseHealth(db),
 		stop: () => (stopped ??= stop())
 	};
 	return app;
-}
-
-async function health(db: Kysely<Database>): Promise<{ ok: true } | { ok: false; why: string }> {
-	try {
-		const { rows } = await sql<{ role: string }>`select current_user as role`.execute(db);
-		if (rows[0]?.role !== 'turnstead_app') {
-			return { ok: false, why: `the database is used as ${rows[0]?.role}, not as turnstead_app` };
-		}
-		return await migrationState(db);
-	} catch (error) {
-		return {
-			ok: false,
-			why: `the database does not answer: ${error instanceof Error ? error.message : String(error)}`
-		};
-	}
 }

@@ -1,4 +1,3 @@
-import type { Kysely } from 'kysely';
 import { formatLine, parseDeviceLine, parseJsonLine, refusalText, type DeviceLine } from '../../turnline/index.ts';
 import { linkStateOf } from '../../winding/link.ts';
 import type { Fact, LiveView, Tap } from '../../winding/types.ts';
@@ -34,7 +33,7 @@ import {
 	type RunChange,
 	type WinderWrite
 } from '../db/recorder.ts';
-import type { Database } from '../db/schema.ts';
+import type { Db } from '../db/schema.ts';
 import { findWinder } from '../db/winders.ts';
 import type { LiveHub } from '../live/hub.ts';
 import { GroupCommit, unsavedRowsMax, type Addition } from './group-commit.ts';
@@ -72,7 +71,7 @@ const traceAgainMs = 2_000;
 const tapFactsBack = 5_000;
 
 export interface IngestOptions {
-	db: Kysely<Database>;
+	db: Db;
 	live: LiveHub;
 	/** The wall clock, Unix ms. */
 	now?: () => number;
@@ -105,7 +104,7 @@ export type TakeIn = { ok: true; taken: TakenIn } | Exclude<Received, { ok: true
 
 /** The only one who knows both the database and the live hub: folds lines, taps and time, shows it, has it written. */
 export class IngestCore implements Ingest {
-	readonly #db: Kysely<Database>;
+	readonly #db: Db;
 	readonly #live: LiveHub;
 	readonly #now: () => number;
 	readonly #steady: () => number;

@@ -1,6 +1,5 @@
 import { randomBytes } from 'node:crypto';
-import type { Kysely } from 'kysely';
-import type { Database } from '../db/schema.ts';
+import type { Db } from '../db/schema.ts';
 import { findLinkKey, hashLinkKey } from '../db/winders.ts';
 import type { WinderRef } from './types.ts';
 
@@ -14,12 +13,12 @@ const ticketsMax = 1_000;
 
 /** Who sends: by a winder's link key, or by a one-use ticket that a person's page asked for. */
 export class LinkKeys {
-	readonly #db: Kysely<Database>;
+	readonly #db: Db;
 	readonly #now: () => number;
 	readonly #known = new Map<string, { ref: WinderRef; until: number }>();
 	readonly #tickets = new Map<string, { ref: WinderRef; until: number }>();
 
-	constructor(db: Kysely<Database>, now: () => number = Date.now) {
+	constructor(db: Db, now: () => number = Date.now) {
 		this.#db = db;
 		this.#now = now;
 	}

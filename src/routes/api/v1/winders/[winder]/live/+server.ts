@@ -22,7 +22,8 @@ export const GET: RequestHandler = async ({ locals, params, request }) => {
 	});
 	if (view === undefined) return away();
 	if (view === null) return notFound();
-	if ((request.headers.get('accept') ?? '').includes('text/event-stream')) {
+	// To HEAD a stream would be an answer without an end.
+	if (request.method === 'GET' && (request.headers.get('accept') ?? '').includes('text/event-stream')) {
 		return liveEventStream(live, workshopId, view.winderId, request.signal);
 	}
 	return json(view, { headers: { 'cache-control': 'no-store' } });
