@@ -1,10 +1,9 @@
 import { error } from '@sveltejs/kit';
-import { sheetTimeText } from '$lib/format';
+import { sheetTimeText, wholeText } from '$lib/format';
 import { guard } from '$lib/server/auth/guard';
 import { csvFile } from '$lib/server/csv';
 import { bookTotals, listBook } from '$lib/server/db/book';
 import { inWorkshop } from '$lib/server/db/connect';
-import { wholeText } from '$lib/format';
 import { parseBookQuery } from '../find';
 import type { RequestHandler } from './$types';
 
@@ -28,7 +27,7 @@ export const GET: RequestHandler = async ({ locals, url }) => {
 	const file = csvFile(
 		[
 			`When (${timeZone})`,
-			'When (UTC)',
+			...(timeZone === 'UTC' ? [] : ['When (UTC)']),
 			'Coil',
 			'Sticker',
 			'Winder',
@@ -48,7 +47,7 @@ export const GET: RequestHandler = async ({ locals, url }) => {
 		],
 		lines.map((line) => [
 			sheetTimeText(line.endedAt, timeZone),
-			sheetTimeText(line.endedAt, 'UTC'),
+			...(timeZone === 'UTC' ? [] : [sheetTimeText(line.endedAt, 'UTC')]),
 			line.name,
 			line.sticker,
 			line.winderName,

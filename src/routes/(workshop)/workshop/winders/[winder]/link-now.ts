@@ -14,6 +14,10 @@ export interface LinkNow {
 	reverse: number;
 	rpm: number;
 	turning: boolean;
+	/** The coil that counts what the spindle turns now; null: none lies on the bench. */
+	coilOnBench: string | null;
+	/** Coils that wait: the bench takes one as soon as the spindle turns. */
+	waiting: number;
 	lines: { at: number; text: string; verdict: string; refused: boolean }[];
 	refused: { text: string; count: number }[];
 	carriers: { name: string; lastAt: number; lines: number }[];
@@ -43,6 +47,8 @@ export async function linkNow(workshopId: string, winderId: string): Promise<Lin
 		reverse: view.reverse,
 		rpm: view.rpm,
 		turning: view.turning,
+		coilOnBench: view.run && view.run.state !== 'kept' && view.run.state !== 'set-aside' ? view.run.coil.name : null,
+		waiting: view.waiting,
 		lines: log.lines
 			.slice(-linesShown)
 			.reverse()
