@@ -144,6 +144,14 @@ describe('standing still', () => {
 		expect(model.pedal?.label).toBe('Start this coil');
 	});
 
+	it('before a start it says which way the wire goes on, and the note that came with the coil', () => {
+		const coil = { ...aRun().coil, direction: 'clockwise', topFaces: 'in', note: 'thin spool' } as const;
+		const model = show(run({ state: 'waiting', onBobbin: 0, startedAt: null, coil }, still));
+		expect(model.setUp).toBe('Seen from the top: clockwise ↻. Top faces in.');
+		expect(model.clock).toBe('thin spool');
+		expect(show(aView()).setUp).toBeNull();
+	});
+
 	it('before a start the cautions stand beside the tap, and a screen that may go dark says so', () => {
 		const waiting = run({ state: 'waiting', onBobbin: 0, startedAt: null }, still);
 		expect(show(waiting).text).toMatch(/before reaching in.*no emergency stop/);
@@ -252,6 +260,10 @@ describe('kept', () => {
 		const late = show(kept(), { keptSeenAtMs: 10_000 }, undoAfterMs);
 		expect(late.taps[0]).toMatchObject({ label: 'Undo', enabled: true });
 		expect(late.pedal?.label).toBe('Undo');
+	});
+
+	it('whether the test was heard is not asked in front of undo', () => {
+		expect(labels(show(kept(), { keptSeenAtMs: 0, sound: 'ask' }))).toContain('Undo');
 	});
 
 	it('undo goes after its ten seconds, with no word from the server', () => {

@@ -1,4 +1,5 @@
 import { durationText, turnsText, wallTime, wholeText } from '../format.ts';
+import { directionText } from '../winding-words.ts';
 import { linkStateOf } from '../winding/link.ts';
 import type { LinkState, LiveView, Notice, RunView, TapKind } from '../winding/types.ts';
 
@@ -76,6 +77,7 @@ export interface BenchModel {
 	name: string;
 	/** After the name: what it is to become. */
 	goal: string;
+	/** Time spent winding; before the start the note that came with the coil. */
 	clock: string;
 	speed: string;
 	/** Next mark, or what to do to go on. */
@@ -85,6 +87,8 @@ export interface BenchModel {
 	messages: string[];
 	/** Below the word where there is no count, or a question in full. */
 	text: string | null;
+	/** Before a coil is started: how the wire is to go on. */
+	setUp: string | null;
 	taps: BenchTap[];
 	entry: CountEntry | null;
 	/** What the one key or pedal does now, and what holding it does. */
@@ -298,7 +302,9 @@ export function present(
 	shown = withAccess(withWaitingTaps(shown, run, options), view, options, turning);
 	if (!turning && options.access === 'ok') {
 		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first.
-		if (options.sound === 'ask' && run?.question == null) shown = { ...shown, ...soundQuestion };
+		// Nor does it cover Undo, which does not wait.
+		const free = run?.question == null && run?.state !== 'kept' && options.asking === null;
+		if (options.sound === 'ask' && free) shown = { ...shown, ...soundQuestion };
 		// Beside answers there is nothing else to touch.
 		const asking = run?.question != null || options.asking !== null;
 		if (!asking) shown = { ...shown, taps: [...shown.taps, screenTap] };
@@ -313,7 +319,15 @@ export function present(
 		old: old && run !== null && run.state !== 'kept' && run.state !== 'set-aside' && run.startedAt !== null,
 		name: run?.coil.name ?? '',
 		goal: run ? turnsText(run.target) : '',
-		clock: run && run.startedAt !== null ? `winding ${durationText(Math.floor(windingMs / 1000) * 1000)}` : '',
+		clock: !run
+			? ''
+			: run.startedAt === null
+				? run.coil.note
+				: `winding ${durationText(Math.floor(windingMs / 1000) * 1000)}`,
+		setUp:
+			run?.state === 'waiting'
+				? `Seen from the top: ${directionText(run.coil.direction)}. Top faces ${run.coil.topFaces}.`
+				: null,
 		speed: speedText(view, lost),
 		winder: view.winderName,
 		messages,
