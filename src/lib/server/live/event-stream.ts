@@ -4,6 +4,9 @@ import type { LiveHub } from './hub.ts';
 /** A browser that lost the stream asks again after this long; the bench screen has its own, jittered. */
 const retryMs = 1_000;
 
+/** Every so many beats it is asked whether the reader may still read: each ten seconds. */
+const beatsPerCheck = 5;
+
 const encoder = new TextEncoder();
 // One winder may have many screens: its view is written out once.
 const frames = new WeakMap<LiveView, Uint8Array>();
@@ -21,11 +24,19 @@ function frameOf(view: LiveView): Uint8Array {
 
 /**
  * The live state of one winder as server-sent events: `live` with the whole LiveView, `beat` every two seconds with the
- * server's time. A reader that stalls holds one view, the newest, however many were published.
+ * server's time. A reader that stalls holds one view, the newest, however many were published. `mayStill` is asked now and
+ * then and ends the stream with false; while it cannot be answered the stream goes on.
  */
-export function liveEventStream(hub: LiveHub, workshopId: string, winderId: string, signal: AbortSignal): Response {
+export function liveEventStream(
+	hub: LiveHub,
+	workshopId: string,
+	winderId: string,
+	signal: AbortSignal,
+	mayStill: () => Promise<boolean>
+): Response {
 	const watcher = hub.open(workshopId, winderId, signal);
 	let first = true;
+	let beats = 0;
 	const stream = new ReadableStream<Uint8Array>(
 		{
 			async pull(controller) {
@@ -38,7 +49,13 @@ export function liveEventStream(hub: LiveHub, workshopId: string, winderId: stri
 				const watched = await watcher.next();
 				if (watched.kind === 'ended') controller.close();
 				else if (watched.kind === 'live') controller.enqueue(frameOf(watched.view));
-				else controller.enqueue(encoder.encode(beatFrame()));
+				else {
+					beats += 1;
+					if (beats % beatsPerCheck === 0 && !(await mayStill().catch(() => true))) {
+						watcher.end();
+						controller.close();
+					} else controller.enqueue(encoder.encode(beatFrame()));
+				}
 			},
 			cancel() {
 				watcher.end();

@@ -41,7 +41,7 @@ describe('the live hub', () => {
 
 	it('holds one view for a reader that stalls, the newest', async () => {
 		const hub = createLiveHub();
-		const response = liveEventStream(hub, 'shop', 'w', new AbortController().signal);
+		const response = liveEventStream(hub, 'shop', 'w', new AbortController().signal, async () => true);
 		const reader = response.body!.getReader();
 		await reader.read();
 		for (let i = 1; i <= 1000; i++) hub.publish('shop', viewWith(i));
@@ -52,6 +52,24 @@ describe('the live hub', () => {
 		await Promise.resolve();
 		expect(told).toBe(false);
 		hub.close();
+	});
+
+	it('ends a stream whose reader may read no more, and not while that cannot be asked', async () => {
+		const hub = createLiveHub();
+		let answer: () => Promise<boolean> = () => Promise.reject(new Error('the database is away'));
+		const response = liveEventStream(hub, 'shop', 'w', new AbortController().signal, () => answer());
+		const reader = response.body!.getReader();
+		await reader.read();
+		const beat = async () => {
+			const read = reader.read();
+			hub.beat();
+			return read;
+		};
+		for (let i = 1; i <= 6; i++) expect((await beat()).done).toBe(false);
+		answer = async () => false;
+		for (let i = 7; i <= 9; i++) expect((await beat()).done).toBe(false);
+		expect((await beat()).done).toBe(true);
+		expect(hub.watchers('shop', 'w')).toBe(0);
 	});
 
 	it('keeps workshops and winders apart', async () => {
