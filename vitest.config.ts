@@ -6,6 +6,9 @@ export default mergeConfig(
 	viteConfig,
 	defineConfig({
 		test: {
+			// A limit for what hangs. On a small machine that does other things too, five seconds are soon over.
+			testTimeout: 60_000,
+			hookTimeout: 60_000,
 			projects: [
 				{
 					extends: true,
