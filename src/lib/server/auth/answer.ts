@@ -8,7 +8,8 @@ export function harden(response: Response, facts: { https: boolean; personal: bo
 	// "same-origin", not "no-referrer": with that, browsers send "Origin: null" with our own forms.
 	set('referrer-policy', 'same-origin');
 	set('x-content-type-options', 'nosniff');
-	set('cross-origin-opener-policy', 'same-origin');
+	// Over plain http from the network browsers ignore it, and complain on every page.
+	if (facts.https) set('cross-origin-opener-policy', 'same-origin');
 	set('cross-origin-resource-policy', 'same-origin');
 	set(
 		'permissions-policy',
