@@ -163,6 +163,11 @@ export class Maker {
 		return acts;
 	}
 
+	/** Somebody says go on: a look, or the preparing of a coil, ends at once. */
+	goOn(): void {
+		if (this.phase === 'looking' || this.phase === 'preparing') this.untilMs = 0;
+	}
+
 	private draw(span: Span): number {
 		return between(this.random, span[0], span[1]);
 	}

@@ -1,4 +1,10 @@
-import { test as base, type BrowserContext, type BrowserContextOptions, type Page } from '@playwright/test';
+import {
+	test as base,
+	type BrowserContext,
+	type BrowserContextOptions,
+	type Page,
+	type Request
+} from '@playwright/test';
 import { startServer, type Person, type TestServer, type Workshop } from './server.ts';
 
 /** A workshop of its own on a server that other tests use as well: most tests need no more. */
@@ -15,6 +21,8 @@ export class Troubles {
 	watch(context: BrowserContext): void {
 		context.on('console', (message) => {
 			if (message.type() !== 'error' && message.type() !== 'warning') return;
+			// Told below, with the request it belongs to.
+			if (message.text().startsWith('Failed to load resource: the server responded')) return;
 			this.#seen.push(`${message.type()} in ${message.page()?.url()}: ${message.text()} (${message.location().url})`);
 		});
 		context.on('weberror', (error) => this.#seen.push(`uncaught: ${error.error().stack ?? error.error().message}`));
@@ -24,8 +32,9 @@ export class Troubles {
 			if (why !== 'net::ERR_ABORTED') this.#seen.push(`failed: ${request.method()} ${request.url()} ${why}`);
 		});
 		context.on('response', (response) => {
-			if (response.status() < 400) return;
-			this.#seen.push(`answer ${response.status()}: ${response.request().method()} ${response.url()}`);
+			const request = response.request();
+			if (response.status() < 400 || (response.status() < 500 && isAnswerToPerson(request))) return;
+			this.#seen.push(`answer ${response.status()}: ${request.method()} ${request.url()}`);
 		});
 	}
 
@@ -42,6 +51,11 @@ export class Troubles {
 	get unexpected(): string[] {
 		return this.#seen.filter((text) => !this.#expected.some((pattern) => pattern.test(text)));
 	}
+}
+
+/** A page that says why, or a form that is refused with a sentence: the test sees it on the screen. */
+function isAnswerToPerson(request: Request): boolean {
+	return request.isNavigationRequest() || request.headers()['x-sveltekit-action'] === 'true';
 }
 
 export interface ScreenOptions extends BrowserContextOptions {
@@ -138,7 +152,7 @@ export async function signIn(page: Page, server: Pick<TestServer, 'url'>, person
 async function letIn(context: BrowserContext, server: TestServer, person: Person): Promise<void> {
 	const answer = await context.request.post(`${server.url}/sign-in`, {
 		form: { email: person.email, password: person.password },
-		headers: { origin: server.url },
+		headers: { origin: server.url, accept: 'text/html' },
 		maxRedirects: 0
 	});
 	if (answer.status() !== 303) throw new Error(`${person.email} was not signed in: ${answer.status()}`);
