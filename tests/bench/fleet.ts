@@ -160,26 +160,23 @@ function openLink(places: Places, winder: number): Promise<Link> {
 	});
 }
 
-/** As a winder does: one request at a time on a kept connection, what comes meanwhile goes with the next. */
+/** Requests of one winder under way at once. An answer comes when the lines are on disk, and no line waits for it here. */
+const postsAtOnce = 8;
+
+/** A POST a line: what an answer waits for is measured elsewhere, here it is the way to the screen. */
 async function openPoster(places: Places, winder: number): Promise<Link> {
-	const agent = new Agent({ keepAlive: true, maxSockets: 1 });
-	let waiting: string[] = [];
-	let asking: Promise<void> | null = null;
-	const go = async () => {
-		while (waiting.length > 0) {
-			const lines = waiting;
-			waiting = [];
-			const { status, body } = await post(places, winder, lines, agent);
-			if (status !== 200) throw new Error(`lines were answered with ${status}: ${body}`);
-		}
-	};
+	const agent = new Agent({ keepAlive: true, maxSockets: postsAtOnce });
+	const asking = new Set<Promise<void>>();
 	return {
 		send(lines) {
-			waiting.push(...lines);
-			asking ??= go().finally(() => (asking = null));
+			const asked = post(places, winder, lines, agent).then(({ status, body }) => {
+				asking.delete(asked);
+				if (status !== 200) throw new Error(`lines were answered with ${status}: ${body}`);
+			});
+			asking.add(asked);
 		},
 		async close() {
-			await asking;
+			await Promise.all(asking);
 			agent.destroy();
 		}
 	};
@@ -209,7 +206,11 @@ export function post(
 			},
 			(answer) => void bodyOf(answer).then((body) => resolve({ status: answer.statusCode ?? 0, body }), reject)
 		);
-		asked.on('error', reject);
+		asked.on('error', (error: NodeJS.ErrnoException) => {
+			// The server ended a connection that was idle at the moment it was taken again.
+			if (asked.reusedSocket && error.code === 'ECONNRESET') resolve(post(places, winder, lines, agent));
+			else reject(error);
+		});
 		asked.end(text);
 	});
 }

@@ -3,6 +3,7 @@ import { sql, type Kysely } from 'kysely';
 import type { Database } from '../../src/lib/server/db/schema.ts';
 import { formatLine } from '../../src/lib/turnline/index.ts';
 import { post, serverPlaces, type Places } from './fleet.ts';
+import type { Options } from './options.ts';
 import { startServer } from './programs.ts';
 import type { Report } from './report.ts';
 import { figure, median } from './statistics.ts';
@@ -10,8 +11,8 @@ import type { BenchWinder, Ground } from './workshop.ts';
 
 /** One batch a winder: the limits on lines allow 600 at once and then 20 a second, so each winder sends once. */
 const linesPerBatch = 500;
-const windersPerRound = 24;
-const sendersAtOnce = 8;
+const windersPerRound = 48;
+const sendersAtOnce = 12;
 const aim = 0.5;
 /** A line a second on the device's clock: none of them is thinned. */
 const lineEveryMs = 1_000;
@@ -32,7 +33,7 @@ interface Row {
 }
 
 /** Lines a second that are on disk before they are answered, beside a plain insert of the same rows. */
-export async function measureDurable(ground: Ground, report: Report, quick: boolean, profile: string | null) {
+export async function measureDurable(ground: Ground, report: Report, { quick, profile }: Options) {
 	const rounds = quick ? 2 : 5;
 	const workshop = await ground.newWorkshop();
 	const { owner } = workshop.database;

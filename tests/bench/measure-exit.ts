@@ -1,6 +1,7 @@
 import { sleep } from '../../src/commands/processes.ts';
 import { openFleet, serverPlaces } from './fleet.ts';
 import { introduce, newPlayer, playRound } from './latency.ts';
+import type { Options } from './options.ts';
 import { startServer } from './programs.ts';
 import type { Report } from './report.ts';
 import { figure } from './statistics.ts';
@@ -11,7 +12,7 @@ const settleMs = 1_000;
 const playMs = 1_000;
 
 /** From SIGTERM to the end of the process, with links and streams open and lines not yet written. */
-export async function measureExit(ground: Ground, report: Report, quick: boolean): Promise<void> {
+export async function measureExit(ground: Ground, report: Report, { quick }: Options): Promise<void> {
 	const times = quick ? 1 : 3;
 	const workshop = await ground.newWorkshop();
 	const added = await workshop.addWinders(winders, true);

@@ -2,6 +2,7 @@ import { sleep } from '../../src/commands/processes.ts';
 import { openBrokerFleet, openFleet, relayPlaces, serverPlaces, type Fleet } from './fleet.ts';
 import { introduce, newPlayer, playRound, type Player } from './latency.ts';
 import { startBroker, startRelay, startServer, type Program } from './programs.ts';
+import type { Options } from './options.ts';
 import type { Report } from './report.ts';
 import { figure, percentile } from './statistics.ts';
 import type { Ground } from './workshop.ts';
@@ -14,11 +15,12 @@ interface Level {
 	together: boolean;
 }
 
-const levels: Level[] = [
+export const levels: Level[] = [
 	{ winders: 1, rounds: 3, roundMs: 9_000, together: true },
 	{ winders: 20, rounds: 3, roundMs: 1_800, together: false },
 	{ winders: 100, rounds: 3, roundMs: 2_200, together: false }
 ];
+/** Enough for the compiler of the program to have settled. */
 const warmUpMs = 1_000;
 /** Coils find their benches, and screens their first state. */
 const settleMs = 1_500;
@@ -32,9 +34,10 @@ interface Way {
 }
 
 /** From a line to the event a screen has of it. */
-export async function measureLatency(ground: Ground, report: Report, quick: boolean, profile: string | null) {
+export async function measureLatency(ground: Ground, report: Report, { quick, profile, winders }: Options) {
 	const workshop = await ground.newWorkshop();
-	const most = Math.max(...levels.map(({ winders }) => winders));
+	const played = levels.filter((level) => winders.length === 0 || winders.includes(level.winders));
+	const most = Math.max(...played.map((level) => level.winders));
 	const [overWs, overHttp] = [await workshop.addWinders(most, true), await workshop.addWinders(most, true)];
 	const server = await startServer(workshop.database.url, { profileFolder: profile });
 	const relay = await startRelay();
@@ -56,7 +59,7 @@ export async function measureLatency(ground: Ground, report: Report, quick: bool
 		ways.push({ name: 'mosquitto, QoS 1', beside: null, open: (n) => openBrokerFleet(n, broker.port) });
 	}
 	try {
-		for (const level of levels) await measureLevel(level, ways, report, quick);
+		for (const level of played) await measureLevel(level, ways, report, quick);
 	} finally {
 		for (const program of programs) await program.stop();
 	}
@@ -107,5 +110,9 @@ async function measureLevel(level: Level, ways: Way[], report: Report, quick: bo
 		});
 		if ((lost[i] ?? 0) > 0) report.note(`${lost[i]} lines of ${way.name} at ${level.winders} never reached a screen.`);
 	}
-	report.say(`${level.winders} winders: ${ways.map((way, i) => `${way.name} p99 ${figure(p99(i))} ms`).join(' · ')}`);
+	const said = ways.map((way, i) => {
+		const p50Ms = percentile((delays[i] ?? []).flat(), 0.5);
+		return `${way.name} ${figure(p50Ms)} / ${figure(p99(i))}`;
+	});
+	report.say(`${level.winders} winders, p50 / p99 ms: ${said.join(' · ')}`);
 }

@@ -3,38 +3,35 @@ import { connect, type Socket } from 'node:net';
 import { sleep } from '../../src/commands/processes.ts';
 import { bodyOf, openFleet, relayPlaces, serverPlaces, type Fleet, type Places } from './fleet.ts';
 import { introduce, newPlayer, playRound, type Player } from './latency.ts';
+import type { Options } from './options.ts';
 import { startRelay, startServer, type Memory, type Program } from './programs.ts';
 import type { Report } from './report.ts';
 import { figure } from './statistics.ts';
 import type { Ground } from './workshop.ts';
 
+/** Come and go before anything is measured, so that compiled code and what is held once for all is there. */
+const warmUp = 40;
 const few = 20;
 const more = 100;
 const settleMs = 1_500;
 /** Until recent lines and short memories of each winder are full. */
-const playMs = { full: 7_000, quick: 4_000 };
+const playMs = { full: 6_000, quick: 4_000 };
 /** Loopback holds some megabytes on its own: the stalled screen is sent several times that. */
 const stalledBytes = 6 * 1024 * 1024;
 const publishersAtOnce = 8;
 const aimBytes = 30_000;
 
 /** What a winder with a link and a screen costs, and what a screen costs that no longer reads. */
-export async function measureMemory(ground: Ground, report: Report, quick: boolean): Promise<void> {
+export async function measureMemory(ground: Ground, report: Report, { quick }: Options): Promise<void> {
 	const ms = quick ? playMs.quick : playMs.full;
 	const workshop = await ground.newWorkshop();
-	const winders = await workshop.addWinders(few + more, true);
+	const winders = await workshop.addWinders(warmUp + few + more, true);
 	const server = await startServer(workshop.database.url, { askMemory: true });
 	const relay = await startRelay({ askMemory: true });
 	const players: Player[] = [];
 	try {
-		const later = (places: Places): Places => ({
-			...places,
-			linkPath: (winder) => places.linkPath(winder + few),
-			livePath: (winder) => places.livePath(winder + few),
-			headers: (winder) => places.headers(winder + few)
-		});
-		const own = await growth(server, serverPlaces(server.port, winders), later, players, ms);
-		const bare = await growth(relay, relayPlaces(relay.port), later, players, ms);
+		const own = await growth(server, serverPlaces(server.port, winders), players, ms);
+		const bare = await growth(relay, relayPlaces(relay.port), players, ms);
 		const stalled = await stallOne(server, serverPlaces(server.port, winders));
 		report.memory({
 			heapBytes: own.heapBytes / more,
@@ -54,18 +51,25 @@ export async function measureMemory(ground: Ground, report: Report, quick: boole
 	}
 }
 
-async function growth(
-	program: Program,
-	places: Places,
-	later: (places: Places) => Places,
-	players: Player[],
-	ms: number
-): Promise<Memory> {
-	const first = await openAndPlay(openFleet(few, places, 'ws'), [], ms, players);
+async function growth(program: Program, places: Places, players: Player[], ms: number): Promise<Memory> {
+	const warm = await openAndPlay(openFleet(warmUp, places, 'ws'), [], ms, players);
+	await warm.fleet.close();
+	players.splice(players.indexOf(warm), 1);
+	const first = await openAndPlay(openFleet(few, after(places, warmUp), 'ws'), [], ms, players);
 	const before = await program.memory();
-	await openAndPlay(openFleet(more, later(places), 'ws'), [first], ms, players);
-	const after = await program.memory();
-	return { heapBytes: after.heapBytes - before.heapBytes, rssBytes: after.rssBytes - before.rssBytes };
+	await openAndPlay(openFleet(more, after(places, warmUp + few), 'ws'), [first], ms, players);
+	const grown = await program.memory();
+	return { heapBytes: grown.heapBytes - before.heapBytes, rssBytes: grown.rssBytes - before.rssBytes };
+}
+
+/** The places of the winders behind the first so many. */
+function after(places: Places, skip: number): Places {
+	return {
+		...places,
+		linkPath: (winder) => places.linkPath(winder + skip),
+		livePath: (winder) => places.livePath(winder + skip),
+		headers: (winder) => places.headers(winder + skip)
+	};
 }
 
 async function openAndPlay(opening: Promise<Fleet>, others: Player[], ms: number, players: Player[]): Promise<Player> {

@@ -51,7 +51,9 @@ export function startRelay(options: StartOptions = {}): Promise<Program> {
 async function startNode(args: string[], says: RegExp, options: StartOptions): Promise<Program> {
 	const { askMemory = false, profileFolder = null, env = {} } = options;
 	const nodeArgs = [
-		...(askMemory ? ['--expose-gc', '--import', probe] : []),
+		...(askMemory ? ['--expose-gc'] : []),
+		'--import',
+		probe,
 		...(profileFolder === null ? [] : ['--cpu-prof', '--cpu-prof-dir', profileFolder])
 	];
 	const child = spawn(process.execPath, [...nodeArgs, ...args], {

@@ -7,17 +7,18 @@ import { ensureBuilt } from '../../src/commands/build.ts';
 import { PlainError } from '../../src/commands/plain-error.ts';
 import { measureDurable } from './measure-durable.ts';
 import { measureExit } from './measure-exit.ts';
-import { measureLatency } from './measure-latency.ts';
+import { levels, measureLatency } from './measure-latency.ts';
 import { measureMemory } from './measure-memory.ts';
 import { Report } from './report.ts';
 import { prepareGround, type Ground } from './workshop.ts';
 
 const help = `Measures the built server beside references in the same run, and prints Markdown.
 
-  npm run bench -- [--quick] [--only latency|durable|memory|exit] [--profile folder]
+  npm run bench -- [--quick] [--only latency|durable|memory|exit] [--winders 1|20|100] [--profile folder]
 
   --quick    fewer and shorter rounds: a look, no figures to keep
   --only     one of the four measurements; may be given more than once
+  --winders  latency with so many alone; may be given more than once
   --profile  writes what the server spends its time on into a folder (.cpuprofile, which slows it)
 
 It takes some four minutes. Nothing else should run on the machine meanwhile.`;
@@ -36,6 +37,7 @@ async function main(): Promise<void> {
 			help: { type: 'boolean', default: false },
 			quick: { type: 'boolean', default: false },
 			only: { type: 'string', multiple: true, default: [] },
+			winders: { type: 'string', multiple: true, default: [] },
 			profile: { type: 'string' }
 		}
 	});
@@ -43,6 +45,11 @@ async function main(): Promise<void> {
 	const unknown = values.only.find((name) => !Object.hasOwn(measurements, name));
 	if (unknown !== undefined) {
 		throw new PlainError(`--only knows ${Object.keys(measurements).join(', ')}, but "${unknown}" came.`);
+	}
+	const winders = values.winders.map(Number);
+	const known = levels.map((level) => level.winders);
+	if (!winders.every((number) => known.includes(number))) {
+		throw new PlainError(`--winders knows ${known.join(', ')}, but "${values.winders.join(' ')}" came.`);
 	}
 	const names = Object.keys(measurements).filter((name) => values.only.length === 0 || values.only.includes(name));
 	const profile = values.profile === undefined ? null : resolve(values.profile);
@@ -59,7 +66,8 @@ async function main(): Promise<void> {
 	const ground = await prepareGround();
 	try {
 		const about = await machine(ground);
-		for (const name of names) await measurements[name as Name](ground, report, values.quick, profile);
+		for (const name of names)
+			await measurements[name as Name](ground, report, { quick: values.quick, profile, winders });
 		report.say(`took ${Math.round((performance.now() - began) / 1000)} s`);
 		console.log(report.markdown(about));
 	} finally {
