@@ -250,7 +250,7 @@ describe('kept', () => {
 	it('shows the line to copy, in the workshop’s own time', () => {
 		const model = show(kept(), { keptSeenAtMs: 10_000, timeZone: 'Europe/Berlin' });
 		expect(model).toMatchObject({ ground: 'mark', shape: 'tag', word: 'Kept', beside: 'K7Q2', status: 'Kept' });
-		expect(model.text).toBe('To copy: K7Q2 · 5,320 turns · start 11:41 · finish 11:49');
+		expect(model.text).toBe('To copy: K7Q2 · 5,320 turns ↺ · start 11:41 · finish 11:49');
 	});
 
 	it('undo cannot be pressed in the first second, so that a double tap never undoes', () => {
@@ -272,9 +272,18 @@ describe('kept', () => {
 	});
 
 	it('the sticker line stands until the next coil turns', () => {
-		const last = { runId: 'run-0', name: 'Screw coil', state: 'kept' as const, onBobbin: 5_320, sticker: 'K7Q2' };
+		const last = {
+			runId: 'run-0',
+			name: 'Screw coil',
+			state: 'kept' as const,
+			onBobbin: 5_320,
+			sticker: 'K7Q2',
+			direction: 'clockwise' as const,
+			startedAt: Date.UTC(2026, 0, 5, 9, 30),
+			endedAt: Date.UTC(2026, 0, 5, 9, 42)
+		};
 		const waiting = run({ state: 'waiting', onBobbin: 0, startedAt: null }, { ...still, last });
-		expect(show(waiting).messages).toEqual(['copy on the last coil: K7Q2 · 5,320 turns']);
+		expect(show(waiting).messages).toEqual(['copy on the last coil: K7Q2 · 5,320 turns ↻ · start 09:30 · finish 09:42']);
 		expect(show(aView({ last })).messages).toEqual([]);
 	});
 

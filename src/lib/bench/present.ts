@@ -1,7 +1,7 @@
 import { durationText, turnsText, wallTime, wholeText } from '../format.ts';
 import { directionText } from '../winding-words.ts';
 import { linkStateOf } from '../winding/link.ts';
-import type { LinkState, LiveView, Notice, RunView, TapKind } from '../winding/types.ts';
+import type { Direction, LinkState, LiveView, Notice, RunView, TapKind } from '../winding/types.ts';
 
 /** Own ground, word, shape and sound for each state: colour never speaks alone. */
 export type Ground = 'plain' | 'ease' | 'look' | 'stop' | 'mark' | 'no-signal';
@@ -517,6 +517,21 @@ function restingFace(run: RunView): Face {
 	});
 }
 
+/** What is copied on the coil: code, turns, which way the wire goes on, start and finish. */
+function stickerLine(
+	sticker: string,
+	onBobbin: number,
+	direction: Direction,
+	startedAt: number | null,
+	finishedAt: number | null,
+	timeZone: string
+): string {
+	const parts = [sticker, `${turnsText(onBobbin)} ${direction === 'clockwise' ? '↻' : '↺'}`];
+	if (startedAt !== null) parts.push(`start ${hourMinute(startedAt, timeZone)}`);
+	if (finishedAt !== null) parts.push(`finish ${hourMinute(finishedAt, timeZone)}`);
+	return parts.join(' · ');
+}
+
 function keptFace(
 	view: LiveView,
 	run: RunView,
@@ -529,21 +544,17 @@ function keptFace(
 	const seenMs = options.keptSeenAtMs === null ? 0 : nowMs - options.keptSeenAtMs;
 	const undo: BenchTap = { ...tap('Undo', 'main', { kind: 'undo' }), enabled: seenMs >= undoAfterMs };
 	const mayUndo = undoLeftMs > 0 && !turning;
-	const start = run.startedAt;
-	const times =
-		start === null
-			? ''
-			: ` · start ${hourMinute(start, options.timeZone)} · finish ${hourMinute(
-					start + (run.windingMs + run.stoppedMs) / view.timeScale,
-					options.timeZone
-				)}`;
+	const finish = run.startedAt === null ? null : run.startedAt + (run.windingMs + run.stoppedMs) / view.timeScale;
 	return face({
 		ground: 'mark',
 		shape: 'tag',
 		word: 'Kept',
 		beside: run.sticker ?? '',
 		ahead: aheadNext(view),
-		text: run.sticker === null ? null : `To copy: ${run.sticker} · ${turnsText(run.onBobbin)}${times}`,
+		text:
+			run.sticker === null
+				? null
+				: `To copy: ${stickerLine(run.sticker, run.onBobbin, run.coil.direction, run.startedAt, finish, options.timeZone)}`,
 		taps: turning ? [] : mayUndo ? [undo, queueTap] : [queueTap],
 		pedal: mayUndo && undo.enabled ? undo : null,
 		status: 'Kept'
@@ -769,10 +780,11 @@ function messagesOf(
 		messages.push('this tablet may sleep: set its screen time-out');
 	}
 	if (view.last && run?.state === 'waiting') {
+		const { state, sticker, onBobbin, direction, startedAt, endedAt } = view.last;
 		messages.push(
-			view.last.state === 'kept'
-				? `copy on the last coil: ${view.last.sticker} · ${turnsText(view.last.onBobbin)}`
-				: `last coil set aside at ${turnsText(view.last.onBobbin)}`
+			state === 'kept'
+				? `copy on the last coil: ${stickerLine(sticker, onBobbin, direction, startedAt, endedAt, options.timeZone)}`
+				: `last coil set aside at ${turnsText(onBobbin)}`
 		);
 	}
 	return messages;

@@ -286,7 +286,16 @@ export interface LiveView {
 	saving: boolean;
 	run: RunView | null;
 	/** The run kept or set aside before this one, so that its sticker line stands until the next coil turns. */
-	last: { runId: string; name: string; state: 'kept' | 'set-aside'; onBobbin: number; sticker: string } | null;
+	last: {
+		runId: string;
+		name: string;
+		state: 'kept' | 'set-aside';
+		onBobbin: number;
+		sticker: string;
+		direction: Direction;
+		startedAt: number | null;
+		endedAt: number | null;
+	} | null;
 	next: { name: string; target: number } | null;
 	waiting: number;
 	/** Time scale of a simulated winder, 1 for a real one. */
