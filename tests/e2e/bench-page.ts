@@ -29,7 +29,7 @@ export class BenchPage {
 
 	/** A remark or sentence anywhere on the screen. */
 	says(text: string | RegExp): Locator {
-		return this.page.locator('[data-tier="near"]').filter({ hasText: text });
+		return this.page.getByRole('main').getByText(text).first();
 	}
 
 	async open(server: Pick<TestServer, 'url'>, winder: TestWinder): Promise<this> {

@@ -129,15 +129,13 @@ test('another workshop’s bench, winder and run are not there', async ({ shop, 
 		await hand.wind(400);
 		await bench.keep.click();
 		await expect(bench.word).toHaveText('Kept');
-		const run = await server.database.owner
-			.selectFrom('run')
-			.select('id')
-			.where('workshop_id', '=', workshop.id)
-			.executeTakeFirstOrThrow();
-
+		const runs = () =>
+			server.database.owner.selectFrom('run').select('id').where('workshop_id', '=', workshop.id).execute();
+		await expect.poll(runs).toHaveLength(1);
+		const runId = (await runs())[0]!.id;
 		const other = await server.addWorkshop(`${workshop.shortName}-over`);
 		const page = await screenOf(server, other.owner);
-		for (const path of [`/bench/${winder.id}`, `/workshop/winders/${winder.id}`, `/book/${run.id}`]) {
+		for (const path of [`/bench/${winder.id}`, `/workshop/winders/${winder.id}`, `/book/${runId}`]) {
 			expect((await page.goto(server.url + path))?.status(), path).toBe(404);
 			await expect(page.getByRole('heading', { name: 'Nothing here' })).toBeVisible();
 		}
