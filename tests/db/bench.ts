@@ -167,6 +167,6 @@ export class Counter {
 	}
 }
 
-export function tapOf(kind: TapKind, memberId: string | null, id = randomUUID()): Tap {
+export function tapOf(kind: TapKind, memberId: string | null, id: string = randomUUID()): Tap {
 	return { ...kind, id, memberId };
 }

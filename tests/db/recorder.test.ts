@@ -10,7 +10,8 @@ import {
 	writeBatch,
 	type LineRow,
 	type NumberedFact,
-	type WinderWrite
+	type WinderWrite,
+	type RunChange
 } from '../../src/lib/server/db/recorder.ts';
 import type { RunFigures } from '../../src/lib/winding/types.ts';
 import { makeShop, makeWinder, queueCoil, type Shop } from './bench.ts';
@@ -166,17 +167,17 @@ describe('a run', () => {
 		const lines = Array.from({ length: 60 }, (_, i) => line(i + 1));
 		const stretch = { b: '5C0E91A7', sign: 1, fromSum: 10, fromNet: 10, toSum: 50, fromTurns: 0 } as const;
 		const closed = {
-			kind: 'closed',
+			kind: 'closed' as const,
 			runId,
 			coilId,
-			state: 'kept',
+			state: 'kept' as const,
 			reason: null,
 			startedAt: at + 1000,
 			endedAt: at + 5000,
 			endedBy: shop.ada,
 			figures,
 			trace: [{ ...stretch, startT: 1000, endT: 5000 }]
-		} as const;
+		} satisfies RunChange;
 		await writeBatch(db.app, [write({ lines, changes: [{ kind: 'started', runId, at: at + 900 }, closed] })]);
 		const row = () => db.owner.selectFrom('run').selectAll().where('id', '=', runId).executeTakeFirstOrThrow();
 		expect(await row()).toMatchObject({

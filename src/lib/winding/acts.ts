@@ -1,6 +1,6 @@
 import { axisAt, net, type BootState, type Point } from './boot.ts';
 import { finishLook } from './looks.ts';
-import { addMove, onBobbinOf, signOf, turnsOf, type PendingTap, type RunCore } from './run.ts';
+import { addMove, newStretch, onBobbinOf, signOf, turnsOf, type PendingTap, type RunCore } from './run.ts';
 import { type Draft, say, sayFault, onBobbinNow, ask, clearQuestion, rememberLast } from './state.ts';
 import type { Tap } from './types.ts';
 
@@ -67,9 +67,7 @@ export function act(d: Draft, run: RunCore, tap: Tap, madeAt: number, point: Poi
 			run.settled = true;
 			run.startedAt = madeAt;
 			if (boot && point && pending) {
-				run.stretches = [
-					{ b: boot.b, sign: signOf(run.plan, config), fromF: point.f, fromV: point.v, toF: null, toV: null }
-				];
+				run.stretches = [newStretch(boot, signOf(run.plan, config), point, config.timeScale)];
 				run.adjust = 0;
 				run.startAxis = axisAt(boot, pending.t, config.timeScale);
 				run.moves = run.moves.filter(([axis]) => axis > run.startAxis!);
@@ -121,7 +119,7 @@ export function act(d: Draft, run: RunCore, tap: Tap, madeAt: number, point: Poi
 			const off = tap.kind === 'taking-off';
 			run.takingOff = off;
 			// One sensor counts everything up: from here the wire comes off and its count is subtracted.
-			if (!config.seesDirection && boot && point) turnStretch(run, boot.b, point, off ? -1 : 1);
+			if (!config.seesDirection && boot && point) turnStretch(run, boot, point, off ? -1 : 1, config.timeScale);
 			say(d, tap.kind, madeAt, { turns: onBobbinThen, ...by });
 			return;
 		}
@@ -166,13 +164,14 @@ export function act(d: Draft, run: RunCore, tap: Tap, madeAt: number, point: Poi
 	}
 }
 
-function turnStretch(run: RunCore, b: string, point: Point, sign: 1 | -1): void {
+/** From this moment the count of the boot goes the other way. */
+function turnStretch(run: RunCore, boot: BootState, point: Point, sign: 1 | -1, timeScale: number): void {
 	for (const stretch of run.stretches) {
-		if (stretch.b !== b || stretch.toF !== null) continue;
+		if (stretch.b !== boot.b || stretch.toF !== null) continue;
 		stretch.toF = point.f;
 		stretch.toV = point.v;
 	}
-	run.stretches.push({ b, sign, fromF: point.f, fromV: point.v, toF: null, toV: null });
+	run.stretches.push(newStretch(boot, sign, point, timeScale));
 }
 
 /** The spindle stands and the maker has said where the wire left: what turned since carried none. */
@@ -217,9 +216,7 @@ export function end(
 		const moves = run.endAxis === null ? [] : run.moves.filter(([axis]) => axis > run.endAxis!);
 		s.end = { b: boot.b, f: point.f, v: point.v, at: d.now, moves };
 		if (s.upNext) {
-			s.upNext.stretches = [
-				{ b: boot.b, sign: signOf(s.upNext.plan, config), fromF: point.f, fromV: point.v, toF: null, toV: null }
-			];
+			s.upNext.stretches = [newStretch(boot, signOf(s.upNext.plan, config), point, config.timeScale)];
 			s.upNext.moves = moves.slice();
 		}
 	}

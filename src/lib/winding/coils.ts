@@ -2,7 +2,7 @@ import { undoMs } from './acts.ts';
 import type { Point } from './boot.ts';
 import { follow } from './follow.ts';
 import { followMarks } from './looks.ts';
-import { newRun, signOf } from './run.ts';
+import { newStretch, newRun, signOf } from './run.ts';
 import { type WinderState, draft, say, onBobbinNow, ask } from './state.ts';
 import type { CoilPlan, Fact, WinderConfig } from './types.ts';
 
@@ -46,14 +46,7 @@ export function takeCoil(
 				zero.v = go.v;
 			}
 		}
-		run.stretches.push({
-			b: boot.b,
-			sign: signOf(run.plan, config),
-			fromF: zero.f,
-			fromV: zero.v,
-			toF: null,
-			toV: null
-		});
+		run.stretches.push(newStretch(boot, signOf(run.plan, config), zero, config.timeScale));
 	}
 	if (s.run && s.run.undoUntil !== null) s.upNext = run;
 	else {

@@ -12,7 +12,7 @@ import type {
 	Tap,
 	WinderConfig
 } from './types.ts';
-import type { BootState, Point } from './boot.ts';
+import { axisAt, type BootState, type Point } from './boot.ts';
 
 /** One attempt at winding one coil, as the fold carries it. Turns are signed the coil's way: up is wire going on. */
 export interface RunCore {
@@ -72,7 +72,25 @@ export interface Stretch {
 	fromV: number;
 	toF: number | null;
 	toV: number | null;
+	/** The boot's device time 0 on the common axis, so that its lines are found when the boot itself is long forgotten. */
+	zeroAxis: number;
 }
+
+/** A stretch that begins to count at these totals of a boot. */
+export const newStretch = (
+	boot: BootState,
+	sign: 1 | -1,
+	from: { f: number; v: number },
+	timeScale: number
+): Stretch => ({
+	b: boot.b,
+	sign,
+	fromF: from.f,
+	fromV: from.v,
+	toF: null,
+	toV: null,
+	zeroAxis: axisAt(boot, 0, timeScale)
+});
 
 /** A tap placed on the device's time that waits until the lines reach it. */
 export interface PendingTap {

@@ -2,7 +2,7 @@ import type { Event, Hi, Tick } from '../turnline/types.ts';
 import { settle } from './acts.ts';
 import { wallAt, type BootState, type Point } from './boot.ts';
 import { turnsPossible } from './plausible.ts';
-import { onBobbinOf, signOf, turnsOf } from './run.ts';
+import { newStretch, onBobbinOf, signOf, turnsOf } from './run.ts';
 import { type WinderState, type Draft, say, sayFault, notice, onBobbinNow, ask, clearQuestion } from './state.ts';
 
 /** Boots and their totals: a new one, one that continues another, one that jumps, two at once. */
@@ -35,14 +35,8 @@ export function enterBoot(d: Draft, boot: BootState, line: Hi | Tick | Event): v
 		if (!run || run.status !== 'open') continue;
 		const fromZero = before !== null || bornAt > run.takenAt;
 		if (run.startedAt === null) run.stretches = [];
-		run.stretches.push({
-			b: boot.b,
-			sign: run.takingOff && !d.config.seesDirection ? -1 : signOf(run.plan, d.config),
-			fromF: fromZero ? 0 : line.f,
-			fromV: fromZero ? 0 : line.v,
-			toF: null,
-			toV: null
-		});
+		const sign = run.takingOff && !d.config.seesDirection ? -1 : signOf(run.plan, d.config);
+		run.stretches.push(newStretch(boot, sign, fromZero ? { f: 0, v: 0 } : line, d.config.timeScale));
 	}
 	const run = d.s.run;
 	if (before && run && run.status === 'open' && run.startedAt !== null && !boot.bridged) {

@@ -78,36 +78,6 @@ export function figuresOf(state: WinderState, config: WinderConfig, runId: strin
 	return run ? readFigures(state, config, run) : null;
 }
 
-/** A stretch of a run in one boot: turns at a moment = base + sign · (f − v − zeroNet), for t from `fromT` to `toT`. */
-export interface Span {
-	b: string;
-	sign: 1 | -1;
-	base: number;
-	zeroNet: number;
-	fromT: number;
-	toT: number | null;
-}
-
-/** The stretches of the run of that id, so that its lines can be found again. Device times are unwrapped ms. */
-export function spansOf(state: WinderState, config: WinderConfig, runId: string): Span[] {
-	const run = [state.run, state.upNext].find((known) => known?.runId === runId);
-	if (!run || run.startAxis === null) return [];
-	let base = run.adjust;
-	const spans: Span[] = [];
-	for (const stretch of run.stretches) {
-		const boot = state.boots.find((known) => known.b === stretch.b);
-		const zeroNet = stretch.fromF - stretch.fromV;
-		if (boot) {
-			const zero = axisAt(boot, 0, config.timeScale);
-			const toT = run.endAxis === null ? null : run.endAxis - zero;
-			spans.push({ b: stretch.b, sign: stretch.sign, base, zeroNet, fromT: run.startAxis - zero, toT });
-		}
-		const end = { f: stretch.toF ?? boot?.f ?? stretch.fromF, v: stretch.toV ?? boot?.v ?? stretch.fromV };
-		base += stretch.sign * (net(end) - zeroNet);
-	}
-	return spans;
-}
-
 /** Runs this state holds: the one on the bench and the one up next. */
 export const runIdsOf = (state: WinderState): string[] =>
 	[state.run, state.upNext].flatMap((run) => (run ? [run.runId] : []));

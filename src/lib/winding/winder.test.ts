@@ -1,15 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { Bench } from './bench-double.ts';
-import {
-	askWhichWinder,
-	changePlan,
-	dropWaiting,
-	idleTurns,
-	mergeCursor,
-	cursorOf,
-	spansOf,
-	wantsCoil
-} from './winder.ts';
+import { askWhichWinder, changePlan, dropWaiting, idleTurns, mergeCursor, cursorOf, wantsCoil } from './winder.ts';
 
 /** A bench with a coil that has been started with a tap at zero. */
 function started(changes = {}, plan = {}): Bench {
@@ -787,13 +778,5 @@ describe('a server that was killed', () => {
 		bench.turn(3, 600, false);
 		expect(bench.run.turns).toBe(210);
 		expect(bench.run.question).toBeNull();
-	});
-
-	it('knows which lines belong to a run', () => {
-		const bench = started({}, { lookEvery: 0 });
-		bench.turn(20);
-		expect(spansOf(bench.state, bench.config, 'run-1')).toEqual([
-			{ b: bench.b, sign: 1, base: 0, zeroNet: 0, fromT: 0, toT: null }
-		]);
 	});
 });

@@ -14,5 +14,5 @@ export { undoMs } from './acts.ts';
 export { askWhichWinder, changePlan, dropWaiting, firstLookTurns, takeCoil, wantsCoil } from './coils.ts';
 export { passTime } from './time.ts';
 export { ackOf, commands } from './commands.ts';
-export { figuresOf, idleTurns, runIdsOf, spansOf, viewOf, type Span, type WinderView } from './view.ts';
+export { figuresOf, idleTurns, runIdsOf, viewOf, type WinderView } from './view.ts';
 export { cursorOf, mergeCursor, type Cursor } from './cursor.ts';

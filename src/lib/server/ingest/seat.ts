@@ -102,19 +102,17 @@ export function traceOf(state: WinderState, config: WinderConfig, run: RunCore):
 		const boot = state.boots.find((known) => known.b === stretch.b);
 		const toF = stretch.toF ?? boot?.f ?? stretch.fromF;
 		const toV = stretch.toV ?? boot?.v ?? stretch.fromV;
-		if (boot) {
-			const zero = axisAt(boot, 0, config.timeScale);
-			found.push({
-				b: stretch.b,
-				sign: stretch.sign,
-				fromSum: stretch.fromF + stretch.fromV,
-				fromNet: stretch.fromF - stretch.fromV,
-				toSum: toF + toV,
-				fromTurns: turns,
-				startT: Math.floor(run.startAxis - zero),
-				endT: Math.ceil((run.endAxis ?? axisAt(boot, boot.t, config.timeScale)) - zero)
-			});
-		}
+		const endAxis = run.endAxis ?? (boot ? axisAt(boot, boot.t, config.timeScale) : run.startAxis);
+		found.push({
+			b: stretch.b,
+			sign: stretch.sign,
+			fromSum: stretch.fromF + stretch.fromV,
+			fromNet: stretch.fromF - stretch.fromV,
+			toSum: toF + toV,
+			fromTurns: turns,
+			startT: Math.floor(run.startAxis - stretch.zeroAxis),
+			endT: Math.ceil(endAxis - stretch.zeroAxis)
+		});
 		turns += stretch.sign * (toF - toV - (stretch.fromF - stretch.fromV));
 	}
 	return found;

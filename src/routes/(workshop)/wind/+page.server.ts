@@ -5,8 +5,8 @@ import { guard } from '$lib/server/auth/guard';
 import { may } from '$lib/server/auth/may';
 import { addCoil, editCoil, findCoil, listWaiting, moveCoil, removeCoil, type Coil } from '$lib/server/db/coils';
 import { inWorkshop } from '$lib/server/db/connect';
-import { windNow } from './benches';
-import { alikeMax, emptyCoil, parseCoilForm, type CoilTyped } from './coil-form';
+import { windNow } from './benches.server';
+import { alikeMax, emptyCoil, parseCoilForm, type CoilTyped } from './coil-form.server';
 import type { Actions, PageServerLoad } from './$types';
 
 export const load: PageServerLoad = async ({ locals, url, depends }) => {

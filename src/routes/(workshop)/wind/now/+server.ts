@@ -1,6 +1,6 @@
 import { json } from '@sveltejs/kit';
 import { guard } from '$lib/server/auth/guard';
-import { windNow } from '../benches';
+import { windNow } from '../benches.server';
 import type { RequestHandler } from './$types';
 
 /** What the page of benches and queue asks for every few seconds: one request, however many winders there are. */

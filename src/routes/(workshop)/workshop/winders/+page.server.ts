@@ -4,7 +4,7 @@ import { guard } from '$lib/server/auth/guard';
 import { may } from '$lib/server/auth/may';
 import { inWorkshop } from '$lib/server/db/connect';
 import { addWinder, listWinders, newLinkKey } from '$lib/server/db/winders';
-import { newWinderTyped, parseWinderForm, typedOf } from './winder-form';
+import { newWinderTyped, parseWinderForm, typedOf } from './winder-form.server';
 import type { Actions, PageServerLoad } from './$types';
 
 export const load: PageServerLoad = async ({ locals }) => {

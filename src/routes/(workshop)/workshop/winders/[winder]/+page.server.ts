@@ -5,8 +5,8 @@ import { may } from '$lib/server/auth/may';
 import { inWorkshop } from '$lib/server/db/connect';
 import { findWinder, newLinkKey, removeWinder, revokeLinkKey, updateWinder } from '$lib/server/db/winders';
 import type { Winder } from '$lib/server/db/winders';
-import { parseWinderForm, typedOf } from '../winder-form';
-import { linkNow } from './link-now';
+import { parseWinderForm, typedOf } from '../winder-form.server';
+import { linkNow } from './link-now.server';
 import type { Actions, PageServerLoad } from './$types';
 
 const nothing = 'There is no such winder.';

@@ -1,6 +1,6 @@
 import { error, json } from '@sveltejs/kit';
 import { guard } from '$lib/server/auth/guard';
-import { linkNow } from '../link-now';
+import { linkNow } from '../link-now.server';
 import type { RequestHandler } from './$types';
 
 /** What the page of a winder asks for while it is open. */

@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { emptyCoil, parseCoilForm, type CoilTyped } from './coil-form.ts';
+import { emptyCoil, parseCoilForm, type CoilTyped } from './coil-form.server.ts';
 
 function parse(typed: Partial<CoilTyped>) {
 	const form = new FormData();

@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { newWinderTyped, parseWinderForm, typedOf, type WinderTyped } from './winder-form.ts';
+import { newWinderTyped, parseWinderForm, typedOf, type WinderTyped } from './winder-form.server.ts';
 
 function parse(typed: Partial<WinderTyped>) {
 	const form = new FormData();
