@@ -3,7 +3,7 @@ import type { Fleet } from './fleet.ts';
 import { LineMaker, periodMs } from './winder.ts';
 
 /** Lines may still be on their way when the last was sent. */
-const lastEventsMs = 500;
+const lastEventsMs = 300;
 /** Between the word that a spindle turns and its first turn. */
 const runUpMs = 200;
 /** The last turn of a round comes this late: three times as slow as those before, as a spindle that runs down. */

@@ -34,7 +34,7 @@ interface Row {
 
 /** Lines a second that are on disk before they are answered, beside a plain insert of the same rows. */
 export async function measureDurable(ground: Ground, report: Report, { quick, profile }: Options) {
-	const rounds = quick ? 2 : 5;
+	const rounds = quick ? 2 : 4;
 	const workshop = await ground.newWorkshop();
 	const { owner } = workshop.database;
 	const winders = await workshop.addWinders(windersPerRound * (rounds + 1));

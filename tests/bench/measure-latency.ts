@@ -16,14 +16,14 @@ interface Level {
 }
 
 export const levels: Level[] = [
-	{ winders: 1, rounds: 3, roundMs: 9_000, together: true },
+	{ winders: 1, rounds: 3, roundMs: 6_000, together: true },
 	{ winders: 20, rounds: 3, roundMs: 1_800, together: false },
 	{ winders: 100, rounds: 3, roundMs: 2_200, together: false }
 ];
 /** Enough for the compiler of the program to have settled. */
 const warmUpMs = 1_000;
 /** Coils find their benches, and screens their first state. */
-const settleMs = 1_500;
+const settleMs = 1_000;
 const aim = 1.3;
 
 interface Way {

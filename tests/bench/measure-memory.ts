@@ -13,9 +13,9 @@ import type { Ground } from './workshop.ts';
 const warmUp = 40;
 const few = 20;
 const more = 100;
-const settleMs = 1_500;
+const settleMs = 1_000;
 /** Until recent lines and short memories of each winder are full. */
-const playMs = { full: 6_000, quick: 4_000 };
+const playMs = { full: 5_500, quick: 4_000 };
 /** Loopback holds some megabytes on its own: the stalled screen is sent several times that. */
 const stalledBytes = 6 * 1024 * 1024;
 const publishersAtOnce = 8;
