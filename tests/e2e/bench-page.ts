@@ -32,6 +32,14 @@ export class BenchPage {
 		return this.page.getByRole('main').getByText(text).first();
 	}
 
+	/** Taps until it is taken: a touch close after another one counts as its trembling. */
+	async press(name: string, shown: Locator): Promise<void> {
+		await expect(async () => {
+			if (!(await shown.isVisible())) await this.tap(name).click({ timeout: 2_000 });
+			await expect(shown).toBeVisible({ timeout: 2_000 });
+		}).toPass();
+	}
+
 	async open(server: Pick<TestServer, 'url'>, winder: TestWinder): Promise<this> {
 		await this.page.goto(`${server.url}/bench/${winder.id}`);
 		return this;
