@@ -12,19 +12,10 @@ import type { RequestHandler } from './$types';
 export const GET: RequestHandler = async (event) => {
 	const { locals, params, request } = event;
 	const { ingest, keys, live } = turnstead();
-	let workshopId: string;
-	/** Asked again while a stream is open: who was removed or signed out everywhere sees no more. */
-	let mayStill: () => Promise<boolean>;
-	if (request.headers.has('authorization')) {
-		const sender = await senderOf(request, params.winder, keys);
-		if (!sender.ok) return sender.refusal;
-		workshopId = sender.ref.workshopId;
-		mayStill = async () => (await senderOf(request, params.winder, keys)).ok;
-	} else {
-		workshopId = guard(locals, 'live.read').workshopId;
-		const claims = await readSession(event);
-		mayStill = async () => claims !== null && (await findMember(locals.db, claims)) !== null;
-	}
+	const byKey = request.headers.has('authorization');
+	const sender = byKey ? await senderOf(request, params.winder, keys) : null;
+	if (sender && !sender.ok) return sender.refusal;
+	const workshopId = sender ? sender.ref.workshopId : guard(locals, 'live.read').workshopId;
 
 	const view = await ingest.view(workshopId, params.winder).catch((error) => {
 		console.error('a winder could not be read:', error);
@@ -34,6 +25,12 @@ export const GET: RequestHandler = async (event) => {
 	if (view === null) return notFound();
 	// To HEAD a stream would be an answer without an end.
 	if (request.method === 'GET' && (request.headers.get('accept') ?? '').includes('text/event-stream')) {
+		// Asked again while the stream is open: who was removed or signed out everywhere sees no more.
+		const claims = byKey ? null : await readSession(event);
+		const mayStill = async () =>
+			byKey
+				? (await senderOf(request, params.winder, keys)).ok
+				: claims !== null && (await findMember(locals.db, claims)) !== null;
 		return liveEventStream(live, workshopId, view.winderId, request.signal, mayStill);
 	}
 	return json(view, { headers: { 'cache-control': 'no-store' } });
