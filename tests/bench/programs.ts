@@ -36,6 +36,24 @@ interface StartOptions {
 const probe = join(projectFolder, 'tests', 'bench', 'probe.js');
 const startMsMax = 20_000;
 
+// A measurement that breaks off, or is broken off, leaves nothing running.
+const running = new Set<ChildProcess>();
+process.on('exit', () => {
+	for (const child of running) child.kill('SIGKILL');
+});
+for (const signal of ['SIGINT', 'SIGTERM'] as const) process.once(signal, () => process.exit(130));
+
+/** Its exit code once it is gone. */
+function watchOver(child: ChildProcess): Promise<number | null> {
+	running.add(child);
+	return new Promise((resolve) =>
+		child.once('exit', (code) => {
+			running.delete(child);
+			resolve(code);
+		})
+	);
+}
+
 /** The built server on a database. */
 export function startServer(databaseUrl: string, options: StartOptions = {}): Promise<Program> {
 	const env = { DATABASE_URL: databaseUrl, AUTH_SECRET: randomBytes(32).toString('base64url'), NODE_ENV: 'production' };
@@ -61,7 +79,7 @@ async function startNode(args: string[], says: RegExp, options: StartOptions): P
 		env: childEnv(env),
 		stdio: ['ignore', 'pipe', 'inherit', 'ipc']
 	});
-	const exited = new Promise<number | null>((resolve) => child.once('exit', (code) => resolve(code)));
+	const exited = watchOver(child);
 	const lines = createInterface({ input: child.stdout as NonNullable<ChildProcess['stdout']> });
 	const listening = new Promise<number>((resolve) => {
 		lines.on('line', (line) => {
@@ -113,7 +131,7 @@ export async function startBroker(): Promise<Program | { why: string }> {
 	const lines = [`listener ${port} 127.0.0.1`, 'allow_anonymous true', 'persistence false', 'set_tcp_nodelay true'];
 	writeFileSync(config, [...lines, ...(isRoot ? ['user root'] : []), 'log_type error', ''].join('\n'));
 	const child = spawn(binary, ['-c', config], { stdio: ['ignore', 'ignore', 'inherit'] });
-	const exited = new Promise<number | null>((resolve) => child.once('exit', (code) => resolve(code)));
+	const exited = watchOver(child);
 	child.once('error', () => {});
 	const stop = async () => {
 		const from = performance.now();
