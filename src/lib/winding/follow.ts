@@ -81,6 +81,7 @@ export function follow(d: Draft, boot: BootState, point: Point, wasTurning: bool
 		say(d, 'taken-back', at, { detail: { turns: back - run.takenBackSaid, total: back } });
 		run.takenBackSaid = back;
 	}
+	if (boot.turning) remarkWrongWay(d, run, onBobbin, at);
 	if (run.snapOpen?.answered && !boot.turning) closeSnap(d, run);
 	if (onBobbin >= settledTurns || run.looks.length > 0) run.settled = true;
 	if (!run.takingOff) {
@@ -108,12 +109,7 @@ function begin(d: Draft, run: RunCore, boot: BootState, point: Point, at: number
 		run.startAxis = movedAxis;
 		if (run.moves.length === 0) addMove(run, movedAxis, 1);
 		say(d, 'moved', run.startedAt, { turns: 0 });
-	} else if (turns <= -rearmTurns) {
-		if (notice(d, 'wrong-way') && !run.said.wrongWay) {
-			run.said.wrongWay = true;
-			sayFault(d, 'wrong-way', at, { turns: -turns });
-		}
-	}
+	} else remarkWrongWay(d, run, turns, at);
 	// Turned back by hand and standing: zero is where it stands.
 	if (turns < 0 && !boot.turning) {
 		for (const stretch of run.stretches) {
@@ -122,6 +118,15 @@ function begin(d: Draft, run: RunCore, boot: BootState, point: Point, at: number
 			stretch.fromV = boot.v;
 		}
 	}
+}
+
+/** Turned the other way than the coil asks, from its zero: the wire goes on backwards. */
+function remarkWrongWay(d: Draft, run: RunCore, turns: number, at: number): void {
+	if (turns > -rearmTurns) return;
+	notice(d, 'wrong-way');
+	if (run.said.wrongWay) return;
+	run.said.wrongWay = true;
+	sayFault(d, 'wrong-way', at, { turns: -turns });
 }
 
 /** Standing after turning: did it coast down, or did the pulses end? */

@@ -215,6 +215,14 @@ describe('direction', () => {
 		expect(bench.run.turns).toBe(3);
 	});
 
+	it('remarks it after a start tap as well', () => {
+		const bench = started();
+		bench.turn(-8);
+		expect(bench.view.notices).toContain('wrong-way');
+		expect(bench.count('wrong-way')).toBe(1);
+		expect(bench.run.turns).toBe(-8);
+	});
+
 	it('subtracts what is taken off with one sensor once it is told so', () => {
 		const bench = started({ seesDirection: false });
 		bench.turn(90, 600, false);

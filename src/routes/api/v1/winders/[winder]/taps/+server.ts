@@ -8,12 +8,13 @@ import type { TapRefusal } from '$lib/winding/types';
 import type { RequestHandler } from './$types';
 import { tapBody } from './tap-body';
 
+/** Short: they stand on the bench in its near line. */
 const sentences: Record<TapRefusal, string> = {
-	'no-run': 'There is no coil on this bench. Nothing was changed.',
-	turning: 'The spindle turns. Stop it first; nothing was changed.',
-	'not-now': 'That has no meaning just now. Nothing was changed; look at the bench again.',
-	'too-late': 'It can be undone for ten seconds and until the next coil turns. What was kept stays kept.',
-	range: 'That count is outside what was wound. Nothing was changed.'
+	'no-run': 'No coil on this bench.',
+	turning: 'Stop the spindle first.',
+	'not-now': 'Not now; nothing was changed.',
+	'too-late': 'Too late to undo; it stays kept.',
+	range: 'Outside what was wound.'
 };
 
 /** One tap on the bench. The same id again is answered as the first time and changes nothing. */
