@@ -21,7 +21,7 @@ describe('line numbers taken in', () => {
 		const boot = newBoot('00000001', 0, 0, 1);
 		for (let n = 1; n < 10_000; n += 2) addLine(boot, n, 0);
 		expect(boot.seen.length).toBeLessThanOrEqual(96);
-		expect(boot.recent.length).toBeLessThanOrEqual(32);
+		expect(boot.recent.length).toBeLessThanOrEqual(64);
 		expect(hasLine(boot, 9_999)).toBe(true);
 		expect(hasLine(boot, 9_998)).toBe(false);
 	});

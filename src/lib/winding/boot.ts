@@ -51,8 +51,8 @@ export interface BootState {
 	g: number;
 	/** Line numbers taken in, as ascending pairs lo, hi; bounded by merging the lowest. */
 	seen: number[];
-	/** [n, sum] of the last lines taken in, to notice the same number with another content. */
-	recent: [number, number][];
+	/** n, sum of the last lines taken in, flat, to notice the same number with another content. */
+	recent: number[];
 	firstAt: number;
 	lastAt: number;
 	/** Wall ms at device time 0 as first estimated; never changed, so that durations stay put. */
@@ -150,8 +150,8 @@ export function hasLine(boot: BootState, n: number): boolean {
 
 export function addLine(boot: BootState, n: number, sum: number): void {
 	boot.n = Math.max(boot.n, n);
-	boot.recent.push([n, sum]);
-	if (boot.recent.length > recentMax) boot.recent.shift();
+	boot.recent.push(n, sum);
+	if (boot.recent.length > recentMax * 2) boot.recent.splice(0, 2);
 	const seen = boot.seen;
 	// The common case first: the number after the highest.
 	if (seen.length > 0 && n === seen[seen.length - 1]! + 1) {
@@ -188,6 +188,12 @@ export function sumOf(point: Point): number {
 		hash = Math.imul(hash, 0x01000193) >>> 0;
 	}
 	return hash;
+}
+
+/** The sum of a line number among the last taken in; null when it is not remembered. */
+export function recentSum(boot: BootState, n: number): number | null {
+	for (let i = boot.recent.length - 2; i >= 0; i -= 2) if (boot.recent[i] === n) return boot.recent[i + 1]!;
+	return null;
 }
 
 /** Whether event `e` has been taken in before. */

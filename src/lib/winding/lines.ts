@@ -6,6 +6,7 @@ import {
 	hasEvent,
 	hasLine,
 	learnOffset,
+	recentSum,
 	loseEvents,
 	newBoot,
 	sumOf,
@@ -55,7 +56,8 @@ const keepTickTurns = 10;
  * @param receivedAt wall ms at which it came in
  */
 export function takeLine(state: WinderState, config: WinderConfig, line: DeviceLine, receivedAt: number): LineStep {
-	const d = draft(state, config, receivedAt);
+	// A birth line may continue any boot before it.
+	const d = draft(state, config, receivedAt, line.verb === 'HI' ? undefined : line.b);
 	const done = (outcome: LineStep['outcome'], keep: KeptLine | null = null, mismatch = false): LineStep => ({
 		state: d.s,
 		facts: d.facts,
@@ -96,8 +98,8 @@ export function takeLine(state: WinderState, config: WinderConfig, line: DeviceL
 	const sum = sumOf(point);
 	// Events by their own number alone: the memory of line numbers is bounded, and an event must never fall to it.
 	if (line.verb === 'E' ? hasEvent(boot, line.e) : hasLine(boot, line.n)) {
-		const first = boot.recent.find(([n]) => n === line.n);
-		const mismatch = first !== undefined && first[1] !== sum;
+		const first = recentSum(boot, line.n);
+		const mismatch = first !== null && first !== sum;
 		if (mismatch) sayFault(d, 'line-mismatch', receivedAt, { n: line.n });
 		return done('duplicate', null, mismatch);
 	}

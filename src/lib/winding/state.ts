@@ -74,15 +74,19 @@ export interface Draft {
 
 const noticeMs = 30_000;
 
-export function draft(state: WinderState, config: WinderConfig, now: number): Draft {
+/**
+ * A copy to work on.
+ *
+ * @param b the boot a line speaks of: only that one and the current one are copied, since lines come by the thousand
+ */
+export function draft(state: WinderState, config: WinderConfig, now: number, b?: string): Draft {
 	const s: WinderState = {
 		...state,
-		boots: state.boots.map(copyBoot),
+		boots: state.boots.map((boot, i) => (b === undefined || i === 0 || boot.b === b ? copyBoot(boot) : boot)),
 		trail: state.trail.slice(),
 		run: state.run && copyRun(state.run),
 		upNext: state.upNext && copyRun(state.upNext),
-		notices: state.notices.filter(([, until]) => until > now),
-		tapsDone: state.tapsDone.slice()
+		notices: state.notices.filter(([, until]) => until > now)
 	};
 	return { s, facts: [], config, now };
 }

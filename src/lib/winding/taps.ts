@@ -63,8 +63,7 @@ export function takeTap(
 	else act(d, run, tap, madeAt, null);
 
 	const answer: TapAnswer = { ok: true, pending };
-	d.s.tapsDone.push([tap.id, answer]);
-	if (d.s.tapsDone.length > tapsDoneMax) d.s.tapsDone.shift();
+	d.s.tapsDone = [...d.s.tapsDone, [tap.id, answer] as [string, TapAnswer]].slice(-tapsDoneMax);
 	return { state: d.s, facts: d.facts, answer };
 }
 

@@ -90,6 +90,9 @@ export const tracePointsMax = 2_000;
 /** Lines swept in one statement, so that a sweep never holds a lock for long. */
 const sweepLinesMax = 5_000;
 
+/** States of winders in one statement: each is some kilobytes, and writing out many at once would hold up lines. */
+const snapshotsAtOnce = 8;
+
 type Trx = Transaction<Database>;
 
 /**
@@ -185,17 +188,21 @@ async function insertFacts(trx: Trx, workshopId: string, writes: WinderWrite[]):
 }
 
 async function upsertSnapshots(trx: Trx, workshopId: string, writes: WinderWrite[]): Promise<void> {
-	const rows = writes.flatMap((write) => (write.snapshot ? [{ ...write.snapshot, winderId: write.winderId }] : []));
-	if (rows.length === 0) return;
-	await sql`
-		insert into winder_state (workshop_id, winder_id, state, fact_no, saved_at)
-		select ${workshopId}::uuid, row.winder_id, row.state::jsonb, row.fact_no, to_timestamp(row.at_ms / 1000.0)
-		from unnest(
-			${rows.map((row) => row.winderId)}::uuid[], ${rows.map((row) => JSON.stringify(row.state))}::text[],
-			${rows.map((row) => row.factNo)}::bigint[], ${rows.map((row) => Math.round(row.at))}::bigint[]
-		) as row (winder_id, state, fact_no, at_ms)
-		on conflict (workshop_id, winder_id) do update set
-			state = excluded.state, fact_no = excluded.fact_no, saved_at = excluded.saved_at`.execute(trx);
+	const rows = writes.flatMap(({ winderId, snapshot }) =>
+		snapshot
+			? [{ winder_id: winderId, state: snapshot.state, fact_no: snapshot.factNo, at_ms: Math.round(snapshot.at) }]
+			: []
+	);
+	for (let at = 0; at < rows.length; at += snapshotsAtOnce) {
+		// One JSON text: an array of JSON texts would be written out twice, the second time to escape each quote in it.
+		await sql`
+			insert into winder_state (workshop_id, winder_id, state, fact_no, saved_at)
+			select ${workshopId}::uuid, row.winder_id, row.state, row.fact_no, to_timestamp(row.at_ms / 1000.0)
+			from jsonb_to_recordset(${JSON.stringify(rows.slice(at, at + snapshotsAtOnce))}::jsonb)
+				as row (winder_id uuid, state jsonb, fact_no bigint, at_ms bigint)
+			on conflict (workshop_id, winder_id) do update set
+				state = excluded.state, fact_no = excluded.fact_no, saved_at = excluded.saved_at`.execute(trx);
+	}
 }
 
 async function changeRun(trx: Trx, workshopId: string, winderId: string, change: RunChange): Promise<void> {

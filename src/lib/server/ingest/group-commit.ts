@@ -15,6 +15,12 @@ const slowMsMax = 3_000;
  */
 export const unsavedRowsMax = 20_000;
 
+/**
+ * What a commit sets free (answers, acknowledgements, views) is let go for so long at a time: a hundred winders at once
+ * would hold up the lines that come meanwhile by some ten milliseconds.
+ */
+const setFreeMsMax = 0.5;
+
 /** What a step adds to what is to be written of one winder. */
 export interface Addition {
 	lines?: LineRow[];
@@ -198,12 +204,12 @@ export class GroupCommit {
 		this.#lines = 0;
 		if (batch.length === 0) return;
 		const error = await this.#try(batch);
-		if (error === null) return this.#saved(batch);
+		if (error === null) return await this.#saved(batch);
 		if (batch.length > 1 && !isAway(error)) {
 			// One winder's rows are refused: the others must not wait for it.
 			for (const journal of batch) {
 				const own = await this.#try([journal]);
-				if (own === null) this.#saved([journal]);
+				if (own === null) await this.#saved([journal]);
 				else this.#failed([journal], own);
 			}
 			return;
@@ -220,8 +226,13 @@ export class GroupCommit {
 		}
 	}
 
-	#saved(batch: Journal[]): void {
+	async #saved(batch: Journal[]): Promise<void> {
+		let from = performance.now();
 		for (const journal of batch) {
+			if (performance.now() - from > setFreeMsMax) {
+				await new Promise((resolve) => setImmediate(resolve));
+				from = performance.now();
+			}
 			const { workshopId, winderId } = journal.write;
 			this.#writing.delete(`${workshopId}/${winderId}`);
 			journal.done();

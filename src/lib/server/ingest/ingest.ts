@@ -47,10 +47,10 @@ export const linksPerWinderMax = 5;
 /** A sender and a maker wait no longer than this for the disk before they are told that it does not save. */
 const saveWaitMsMax = 4_000;
 const notSavedRetryS = 2;
-/** The whole state is some kilobytes; between facts it is written no more often than this. */
-const snapshotMsMin = 1_000;
 /** How often time is told to the fold. */
 const tickMs = 250;
+/** Seats are told in so many slices of it, so that many of them do not hold up lines. */
+const tickSlices = 10;
 /** A winder nobody sends to, taps or watches leaves the memory after this. */
 const idleMsMax = 10 * 60_000;
 /** A winder that is winding comes again this soon over HTTP, else within a second. */
@@ -116,6 +116,9 @@ export class IngestCore implements Ingest {
 	readonly #loading = new Map<string, Promise<Seat | null>>();
 	readonly #shops = new Map<string, Shop>();
 	#timer: NodeJS.Timeout | null = null;
+	/** Stopped: nothing more is taken in, for nobody would write it. */
+	#stopped = false;
+	#slice = 0;
 	#sweptAt: number;
 
 	constructor(options: IngestOptions) {
@@ -142,12 +145,13 @@ export class IngestCore implements Ingest {
 
 	/** Starts the clock. */
 	start(): void {
-		this.#timer ??= setInterval(() => this.tick(), tickMs);
+		this.#timer ??= setInterval(() => this.#tickSlice(), tickMs / tickSlices);
 		this.#timer.unref();
 	}
 
 	/** Writes what is left, once. Nothing is taken in afterwards by anybody who waits for this. */
 	async stop(): Promise<void> {
+		this.#stopped = true;
 		if (this.#timer) clearInterval(this.#timer);
 		this.#timer = null;
 		for (const seat of this.#seats.values()) {
@@ -178,6 +182,7 @@ export class IngestCore implements Ingest {
 	async takeIn(link: WinderRef, lines: string[], carrier: Carrier, receivedAtMs: number): Promise<TakeIn> {
 		const seat = await this.#seat(link.workshopId, link.winderId);
 		if (!seat) return { ok: false, why: 'not-found' };
+		if (this.#stopped) return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 		if (lines.length > linesAtOnceMax) return { ok: false, why: 'too-many-lines' };
 
 		const parse = carrier === 'ndjson' ? parseJsonLine : parseDeviceLine;
@@ -274,6 +279,7 @@ export class IngestCore implements Ingest {
 	async tap(workshopId: string, winderId: string, tap: Tap, ageMs: number): Promise<TapAnswer> {
 		const seat = await this.#seat(workshopId, winderId);
 		if (!seat) return { ok: false, why: 'not-found' };
+		if (this.#stopped) return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 		const now = this.#now();
 		seat.usedAt = this.#steady();
 		// Only a tap that is older than this seat can be known to the record alone.
@@ -420,6 +426,7 @@ export class IngestCore implements Ingest {
 
 	/** Gives coils to idle benches of a workshop; one pass at a time. `heard`: a bench whose winder speaks right now. */
 	#give(shop: Shop, heard: Seat | null = null, look = false): Promise<void> {
+		if (this.#stopped) return Promise.resolve();
 		if (shop.giving) {
 			shop.again ||= look;
 			return shop.giving;
@@ -437,6 +444,7 @@ export class IngestCore implements Ingest {
 	}
 
 	async #giveAll(shop: Shop, heard: Seat | null, look: boolean): Promise<void> {
+		const before = { next: shop.next, waiting: shop.waiting };
 		try {
 			for (const seat of [...shop.unsure]) await this.#adopt(seat);
 			if (look) await this.#readQueue(shop);
@@ -458,6 +466,8 @@ export class IngestCore implements Ingest {
 			shop.giveAt = this.#steady() + giveAgainMs;
 			this.#onError('The queue could not be read.', error);
 		}
+		// With every look at a queue that stays as it is, all benches would be shown anew four times a second.
+		if (shop.next === before.next && shop.waiting === before.waiting) return;
 		for (const seat of this.#seats.values()) if (seat.shop === shop) this.#show(seat);
 	}
 
@@ -575,8 +585,17 @@ export class IngestCore implements Ingest {
 
 	/** Tells the fold the time; shows what time alone changes. */
 	tick(): void {
+		for (let slice = 0; slice < tickSlices; slice += 1) this.#tickSlice();
+	}
+
+	/** The seats of the next slice; with the last of them what is there once for all. */
+	#tickSlice(): void {
 		const now = this.#now();
-		for (const seat of this.#seats.values()) this.#tickSeat(seat, now);
+		this.#slice = (this.#slice + 1) % tickSlices;
+		for (const [i, seat] of [...this.#seats.values()].entries()) {
+			if (i % tickSlices === this.#slice) this.#tickSeat(seat, now);
+		}
+		if (this.#slice !== 0) return;
 		for (const shop of this.#shops.values()) void this.#give(shop);
 		if (this.#steady() - this.#sweptAt >= sweepMs) {
 			this.#sweptAt = this.#steady();
@@ -751,7 +770,7 @@ export class IngestCore implements Ingest {
 	}
 
 	#snapshotDue(seat: Seat): boolean {
-		return seat.state !== seat.written && this.#steady() - seat.writtenAt >= snapshotMsMin;
+		return seat.state !== seat.written && this.#steady() - seat.writtenAt >= seat.snapshotMs;
 	}
 
 	#saved(workshopId: string, winderId: string): void {

@@ -41,6 +41,11 @@ export class Seat {
 	/** The state as it was last given to be written, and when. */
 	written: WinderState | null;
 	writtenAt = 0;
+	/**
+	 * The whole state is some kilobytes; between facts it is written no more often than this: at most a second, and
+	 * another part of it for each winder, so that a hundred that began together do not all fall due at once.
+	 */
+	readonly snapshotMs = 750 + Math.random() * 250;
 	usedAt: number;
 	readonly seatedAt: number;
 	/** Answers of the taps made since then, the newest last; bounded. */
