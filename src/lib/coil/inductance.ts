@@ -185,21 +185,33 @@ export function meanLogDistance(width: number, height: number, i: number, k: num
 	return sum / (x * x * y * y) + Math.log(long);
 }
 
-/** `follow` is 0.5 % off and quick: enough for how inductance changes with the window. */
+/** `follow` is up to 2 % off and quick: enough for how inductance changes with the window. */
 export type Accuracy = 'full' | 'follow';
 
 /** Cells in the window, from which what infinitely many would give is drawn: the error falls as one over their number. */
 const fineCells = 25;
 const coarseCells = 9;
+/** Always the same, whatever the shape, so that the answer moves without steps. */
+const followGrid: Grid = { columns: 2, rows: 2 };
 /** Of a winding one wire deep, whose cells cannot be near-square. */
 const cellsInRowMax = 160;
 
-/** Mean of all mutual inductances of the cells of a window: L of one turn spread over it. */
-function meanMutualH(window: Window, cells: number): { henry: number; cells: number } {
-	const { straightM: straight, windingDepthM: depth, traverseM: traverse } = window;
-	const across = Math.sqrt((cells * depth) / traverse);
-	const columns = Math.max(1, Math.min(cells, Math.round(across)));
+/** How many cells across the depth and along the traverse. */
+interface Grid {
+	columns: number;
+	rows: number;
+}
+
+/** About so many cells, as near to squares as whole numbers come. */
+function nearSquare({ windingDepthM: depth, traverseM: traverse }: Window, cells: number): Grid {
+	const columns = Math.max(1, Math.min(cells, Math.round(Math.sqrt((cells * depth) / traverse))));
 	const rows = Math.max(1, Math.min(cellsInRowMax, Math.round((columns * traverse) / Math.max(depth, 1e-12))));
+	return { columns, rows };
+}
+
+/** Mean of all mutual inductances of the cells of a window: L of one turn spread over it. */
+function meanMutualH(window: Window, { columns, rows }: Grid): number {
+	const { straightM: straight, windingDepthM: depth, traverseM: traverse } = window;
 	const width = depth / columns;
 	const height = traverse / rows;
 	const radius = (i: number) => window.endDiameterM / 2 + (i + 0.5) * width;
@@ -222,15 +234,17 @@ function meanMutualH(window: Window, cells: number): { henry: number; cells: num
 			}
 		}
 	}
-	return { henry: sum / (columns * rows) ** 2, cells: columns * rows };
+	return sum / (columns * rows) ** 2;
 }
 
 function singleTurnH(window: Window, accuracy: Accuracy): number {
-	const coarse = meanMutualH(window, coarseCells);
-	if (accuracy === 'follow') return coarse.henry;
-	const fine = meanMutualH(window, fineCells);
-	if (fine.cells === coarse.cells) return fine.henry;
-	return (fine.cells * fine.henry - coarse.cells * coarse.henry) / (fine.cells - coarse.cells);
+	if (accuracy === 'follow') return meanMutualH(window, followGrid);
+	const coarse = nearSquare(window, coarseCells);
+	const fine = nearSquare(window, fineCells);
+	const few = coarse.columns * coarse.rows;
+	const many = fine.columns * fine.rows;
+	const fineH = meanMutualH(window, fine);
+	return few === many ? fineH : (many * fineH - few * meanMutualH(window, coarse)) / (many - few);
 }
 
 /** Windows lately asked for, so that moving one control leaves the other coil as it is. */

@@ -87,12 +87,12 @@ const windowOf = (model: CoilModel, coil: Coil): Window => ({
 	traverseM: model.bobbin.traverseM
 });
 
-/** Self-capacitance of coils joined, by their packing. */
-function joinedCoilF(packing: number, count: number, connection: Connection): number {
-	const one = coilCapacitanceF(packing);
-	if (connection === 'single') return one;
-	return connection === 'series' ? one / count : one * count;
-}
+/**
+ * Self-capacitance of a pickup nobody has measured, by its packing. Two in series count as one: what joining them halves
+ * the wiring between them and the plate below make up again (from memory).
+ */
+const pickupCoilF = (packing: number, count: number, connection: Connection): number =>
+	coilCapacitanceF(packing) * (connection === 'parallel' ? count : 1);
 
 /** The whole prediction, each figure with its standard uncertainty and what that comes from. */
 export function predict(input: PredictionInput): Result<Prediction> {
@@ -174,7 +174,7 @@ export function predict(input: PredictionInput): Result<Prediction> {
 		const between = coupling * Math.sqrt(henries[0]! * (henries[1] ?? 0));
 		const joinedAirH = joinedHenry(henries, connection, between);
 		const inductanceH = permeability * joinedAirH;
-		const coilF = load && capacitance * (load.coilF ?? joinedCoilF(model.packing, turns.length, connection));
+		const coilF = load && capacitance * (load.coilF ?? pickupCoilF(model.packing, turns.length, connection));
 		const peak = load && findPeak({ ...load, inductanceH, resistanceOhm, coilF: coilF ?? 0 });
 		const one = now[0]!;
 		return {
@@ -211,7 +211,7 @@ export function predict(input: PredictionInput): Result<Prediction> {
 			inductanceH: air[i]! * (input.effectivePermeability ?? 1)
 		})),
 		mutualAirH,
-		coilF: load && (load.coilF ?? joinedCoilF(input.packing, turns.length, connection))
+		coilF: load && (load.coilF ?? pickupCoilF(input.packing, turns.length, connection))
 	});
 }
 
