@@ -83,7 +83,8 @@ export interface DeviceWatcher {
 	plan?(plan: DevicePlan): void;
 }
 
-interface Retained {
+/** What memory that survives holds: a boot the host knows, and its totals continued to now. */
+export interface Retained {
 	b: string;
 	f: number;
 	v: number;
@@ -132,9 +133,17 @@ export class Device {
 		readonly traits: DeviceTraits,
 		private readonly random: Random,
 		nowMs: number,
-		private readonly watcher: DeviceWatcher = {}
+		private readonly watcher: DeviceWatcher = {},
+		/** What that memory held when the supply came on. */
+		found: Retained | null = null
 	) {
+		this.retained = found;
 		this.now = this.born(nowMs);
+	}
+
+	/** What memory that survives would hold if the supply went now. */
+	get memory(): Retained | null {
+		return this.traits.retains ? this.continued() : null;
 	}
 
 	get boot(): string {

@@ -1,8 +1,12 @@
 import { closeSync, openSync, writeSync } from 'node:fs';
+import { readMemory, writeMemory } from './memory.ts';
 import { readCommand, type Command } from './options.ts';
 import { startSimulation, type SimulationResult } from './run.ts';
 
 /** `npm run simulate`: see `--help`. */
+
+/** A program that is killed forgets no more than this. */
+const memoryMs = 500;
 
 const exitCodes = { allAcknowledged: 0, someNot: 1, misunderstood: 2 };
 
@@ -16,8 +20,11 @@ else process.exitCode = await play(read.command);
 async function play(command: Command): Promise<number> {
 	// One write a line, at once: what was logged is there even if this process is killed.
 	const truth = command.truthFile === null ? null : openSync(command.truthFile, 'a');
+	const { memoryFile } = command;
+	const memory = memoryFile === null ? {} : readMemory(memoryFile);
 	const simulation = startSimulation({
 		...command.simulation,
+		memory,
 		...(truth !== null && {
 			truth: (entry) => {
 				writeSync(truth, JSON.stringify(entry) + '\n');
@@ -28,6 +35,8 @@ async function play(command: Command): Promise<number> {
 			else if (!command.quiet) console.log(text);
 		}
 	});
+	const keep = () => memoryFile !== null && writeMemory(memoryFile, simulation.winders, memory);
+	const keeping = memoryFile === null ? null : setInterval(keep, memoryMs);
 	const stop = () => void simulation.stop();
 	process.on('SIGTERM', stop);
 	process.on('SIGINT', stop);
@@ -35,6 +44,8 @@ async function play(command: Command): Promise<number> {
 	const orphaned = command.withParent ? setInterval(() => process.ppid !== parent && stop(), 1000) : null;
 
 	const result = await simulation.done;
+	if (keeping) clearInterval(keeping);
+	keep();
 	if (orphaned) clearInterval(orphaned);
 	process.off('SIGTERM', stop);
 	process.off('SIGINT', stop);

@@ -10,6 +10,7 @@ import { scenarioNames, scenarios, type ScenarioName } from './scenarios.ts';
 export interface Command {
 	simulation: SimulationOptions;
 	truthFile: string | null;
+	memoryFile: string | null;
 	quiet: boolean;
 	/** End when the process that started this one is gone. */
 	withParent: boolean;
@@ -51,6 +52,7 @@ The winder
   --one-sensor          does not see the direction
   --keep-lines <n>      lines it can keep while the link is down (256, at least 32)
   --retain              totals survive a restart of the microcontroller
+  --memory <file>       they survive the end of this program as well, in this file
   --bounce <share>      share of the sensor's changes that chatter, 0 to 1
   --miss <share>        share of passing magnets that go unseen, 0 to 1
 
@@ -115,6 +117,7 @@ const known = {
 	'one-sensor': flag,
 	'keep-lines': text,
 	retain: flag,
+	memory: text,
 	bounce: text,
 	miss: text,
 	drop: text,
@@ -161,7 +164,7 @@ function understand(args: string[], linkKey: string | undefined): ReadCommand {
 			...given('pulsesPerTurn', whole('--pulses-per-turn', values['pulses-per-turn'], 1, 64)),
 			...given('bufLines', whole('--keep-lines', values['keep-lines'], 32, 100_000)),
 			...(values['one-sensor'] && { seesDirection: false }),
-			...(values.retain && { retains: true })
+			...((values.retain || values.memory !== undefined) && { retains: true })
 		},
 		sensor: {
 			...given('bounceChance', number('--bounce', values.bounce, 0, 1)),
@@ -179,6 +182,7 @@ function understand(args: string[], linkKey: string | undefined): ReadCommand {
 		command: {
 			simulation,
 			truthFile: values.truth ?? null,
+			memoryFile: values.memory ?? null,
 			quiet: values.quiet ?? false,
 			withParent: values['with-parent'] ?? false
 		}

@@ -1,7 +1,7 @@
 import type { Carrier, CarrierTarget } from './carrier.ts';
 import { openHttpCarrier } from './carrier-http.ts';
 import { openWsCarrier } from './carrier-ws.ts';
-import { ordinaryDevice, type DeviceTraits } from './device.ts';
+import { ordinaryDevice, type DeviceTraits, type Retained } from './device.ts';
 import { inOutage, noFaults, Pipe, type FaultTraits } from './faults.ts';
 import type { MakerTraits, Span } from './maker.ts';
 import { ordinarySensor, ordinarySpindle, type SensorTraits, type SpindleTraits } from './physics.ts';
@@ -36,6 +36,8 @@ export interface SimulationOptions {
 	spindle?: Partial<SpindleTraits>;
 	sensor?: Partial<Pick<SensorTraits, 'bounceChance' | 'missChance'>>;
 	maker?: Partial<MakerTraits>;
+	/** What each winder's memory that survives held at the start, by its id. */
+	memory?: Readonly<Record<string, Retained>>;
 	/** Only for a server on loopback. */
 	insecureTls?: boolean;
 	/** Ends it politely. */
@@ -189,7 +191,8 @@ class Link {
 					seesDirection: device.seesDirection
 				},
 				maker: { ...scenario.maker, ...options.maker },
-				mishap: scenario.mishap
+				mishap: scenario.mishap,
+				found: options.memory?.[target.winder] ?? null
 			},
 			(entry) => options.truth?.({ ...entry, at: Date.now() }),
 			() => this.restarts()

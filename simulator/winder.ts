@@ -1,5 +1,5 @@
 import type { Event } from '../src/lib/turnline/index.ts';
-import { Device, type DeviceTraits } from './device.ts';
+import { Device, type DeviceTraits, type Retained } from './device.ts';
 import { Maker, type MakerTraits, type Phase } from './maker.ts';
 import { handsOff, Sensor, Spindle, stepMsMax, type SensorTraits, type SpindleTraits } from './physics.ts';
 import { between, randomFrom, type Random } from './random.ts';
@@ -19,6 +19,8 @@ export interface WinderTraits {
 	sensor: SensorTraits;
 	maker: MakerTraits;
 	mishap: Mishap | null;
+	/** What memory that survives held at the start. */
+	found?: Retained | null;
 }
 
 export const truthKinds = [
@@ -122,15 +124,21 @@ export class SimulatedWinder {
 		this.spindle = new Spindle(traits.spindle, stream('spindle'));
 		this.sensor = new Sensor(traits.sensor, stream('sensor'));
 		this.maker = new Maker(traits.maker, stream('maker'));
-		this.device = new Device(traits.device, randomFrom(traits.bootSeed, traits.id, 'boot'), 0, {
-			event: (line) => this.eventMade(line),
-			acknowledged: (events) => this.eventsFreed(events),
-			lost: (line) => {
-				this.eventsLost++;
-				this.log('event-lost', { e: line.e, k: line.k });
+		this.device = new Device(
+			traits.device,
+			randomFrom(traits.bootSeed, traits.id, 'boot'),
+			0,
+			{
+				event: (line) => this.eventMade(line),
+				acknowledged: (events) => this.eventsFreed(events),
+				lost: (line) => {
+					this.eventsLost++;
+					this.log('event-lost', { e: line.e, k: line.k });
+				},
+				plan: ({ set }) => this.log('plan', { ...set })
 			},
-			plan: ({ set }) => this.log('plan', { ...set })
-		});
+			traits.found
+		);
 		this.bootBegins();
 	}
 

@@ -18,6 +18,8 @@ export function startSimulator(url: string, winder: DemoWinder, onEnd: (code: nu
 	const main = join(projectFolder, 'simulator', 'main.ts');
 	const args = ['--import', 'tsx', main, '--server', url, '--winder', winder.id, '--name', winder.name];
 	args.push('--scenario', 'workshop', '--quiet', '--with-parent');
+	// Its totals go on where they were at the last stop, so that a coil half wound needs no question.
+	args.push('--memory', join(projectFolder, '.data', 'demo-winder-memory.json'));
 	// The certificate is for the name of the shop, not for the address by which this machine reaches itself.
 	if (/^https:\/\/(127\.|localhost|\[::1\])/.test(url)) args.push('--insecure-tls');
 	const child: ChildProcess = spawn(process.execPath, args, {
