@@ -108,16 +108,20 @@ export function traceOf(state: WinderState, config: WinderConfig, run: RunCore):
 		const toF = stretch.toF ?? boot?.f ?? stretch.fromF;
 		const toV = stretch.toV ?? boot?.v ?? stretch.fromV;
 		const endAxis = run.endAxis ?? (boot ? axisAt(boot, boot.t, config.timeScale) : run.startAxis);
-		found.push({
-			b: stretch.b,
-			sign: stretch.sign,
-			fromSum: stretch.fromF + stretch.fromV,
-			fromNet: stretch.fromF - stretch.fromV,
-			toSum: toF + toV,
-			fromTurns: turns,
-			startT: Math.floor(run.startAxis - stretch.zeroAxis),
-			endT: Math.ceil(endAxis - stretch.zeroAxis)
-		});
+		// A state stored before stretches knew their boot's clock: the figures stand, the drawing lacks that part. A run must
+		// never fail to be saved for its drawing.
+		if (Number.isFinite(stretch.zeroAxis)) {
+			found.push({
+				b: stretch.b,
+				sign: stretch.sign,
+				fromSum: stretch.fromF + stretch.fromV,
+				fromNet: stretch.fromF - stretch.fromV,
+				toSum: toF + toV,
+				fromTurns: turns,
+				startT: Math.floor(run.startAxis - stretch.zeroAxis),
+				endT: Math.ceil(endAxis - stretch.zeroAxis)
+			});
+		}
 		turns += stretch.sign * (toF - toV - (stretch.fromF - stretch.fromV));
 	}
 	return found;
