@@ -129,6 +129,14 @@ describe('a racetrack', () => {
 		}
 	});
 
+	it('with a winding of next to no depth has what a winding of none has', () => {
+		const thin = mm(50.8, 6, 1e-7, 6.2);
+		const none = value(airInductanceH({ ...thin, windingDepthM: 0 }, 100));
+		within(value(airInductanceH(thin, 100)), none, 1e-4);
+		within(value(airInductanceH(thin, 100, 'follow')), none, 0.03);
+		within(value(airInductanceH({ ...thin, windingDepthM: 0 }, 100, 'follow')), none, 0.03);
+	});
+
 	it('has four times the inductance with twice the turns in the same window', () => {
 		const window = mm(51, 4.9, 4.1, 11.2);
 		within(value(airInductanceH(window, 8000)), 4 * value(airInductanceH(window, 4000)), 1e-12);

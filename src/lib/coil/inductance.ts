@@ -154,8 +154,12 @@ function logArea(x: number, y: number): number {
 	return (log + angles - (25 / 24) * x2 * y2) / 2;
 }
 
-/** Twofold antiderivative of ln|u|. */
-const logLine = (u: number): number => (u === 0 ? 0 : (u * u * Math.log(Math.abs(u))) / 2 - 0.75 * u * u);
+/** Twofold antiderivative of ln√(u² + b²) in u: the line to another beside it, `b` away. */
+function logLine(u: number, b: number): number {
+	const square = u * u + b * b;
+	if (square === 0) return 0;
+	return ((u * u - b * b) * Math.log(square)) / 4 - 0.75 * u * u + b * u * Math.atan2(u, b);
+}
 
 /** Cells flatter than this are treated as lines: the difference is lost in rounding before it matters. */
 const flattest = 20;
@@ -169,10 +173,10 @@ export function meanLogDistance(width: number, height: number, i: number, k: num
 	const short = Math.min(width, height);
 	if (long > flattest * short) {
 		const [along, beside] = width > height ? [i, k] : [k, i];
-		if (beside !== 0) return Math.log(Math.hypot(i * width, k * height));
+		const b = (beside * short) / long;
 		// Within itself a flat rectangle counts as a line of both its sides' length.
-		const length = along === 0 ? long + short : long;
-		return logLine(along + 1) - 2 * logLine(along) + logLine(along - 1) + Math.log(length);
+		const length = along === 0 && beside === 0 ? long + short : long;
+		return logLine(along + 1, b) - 2 * logLine(along, b) + logLine(Math.abs(along - 1), b) + Math.log(length);
 	}
 	const x = width / long;
 	const y = height / long;
@@ -222,13 +226,14 @@ function meanMutualH(window: Window, { columns, rows }: Grid): number {
 			for (let k = 0; k < rows; k += 1) {
 				const times = (i === j ? 1 : 2) * (k === 0 ? rows : 2 * (rows - k));
 				const logMean = meanLogDistance(width, height, j - i, k);
+				const middle = Math.hypot((j - i) * width, k * height);
 				let mutual: number;
-				if (i === j && k === 0) mutual = racetracks(straight, radius(i), radius(i), Math.exp(logMean));
+				// The same cell, or flat ones that lie upon one another: one filament at the mean distance from itself.
+				if (middle < 0.1 * Math.exp(logMean)) mutual = racetracks(straight, radius(i), radius(i), Math.exp(logMean));
 				else {
 					// Two filaments stand for two cells but for the mean of the logarithm between their points.
-					const logMiddle = Math.log(Math.hypot((j - i) * width, k * height));
 					const beside = (mu0 / (2 * Math.PI)) * Math.sqrt(around(i) * around(j));
-					mutual = racetracks(straight, radius(i), radius(j), k * height) - beside * (logMean - logMiddle);
+					mutual = racetracks(straight, radius(i), radius(j), k * height) - beside * (logMean - Math.log(middle));
 				}
 				sum += times * mutual;
 			}

@@ -154,7 +154,7 @@ export function ohmPerM(diameterM: number, temperatureC = 20, resistivityOhmM = 
 }
 
 /** Copper mass per metre in kg. */
-export const copperKgPerM = (diameterM: number): number => copperDensityKgPerM3 * areaM2(diameterM);
+export const copperKgPerM = (diameterM: number): number => sound(copperDensityKgPerM3 * areaM2(diameterM));
 
 const newtonPerPoundForce = 4.4482216152605;
 /** Greatest recommended tension of AWG 40 to 44 in pounds-force: a wire maker's published tension chart. */
