@@ -47,6 +47,8 @@ export interface BootState {
 	/** Signed rpm at that moment. */
 	r: number;
 	turning: boolean;
+	/** Moment at which the totals last grew. */
+	grownT: number;
 	x: number;
 	g: number;
 	/** Line numbers taken in, as ascending pairs lo, hi; bounded by merging the lowest. */
@@ -97,6 +99,7 @@ export function newBoot(b: string, t: number, receivedAt: number, timeScale: num
 		t: -1,
 		r: 0,
 		turning: false,
+		grownT: -1,
 		x: 0,
 		g: 0,
 		seen: [],

@@ -146,6 +146,13 @@ function takeAnswer(d: Draft, b: string, ok: boolean, id: number | undefined, wh
 	if (d.s.set && id !== undefined && d.s.set.id === id && d.s.set.b === b) d.s.set = { ...d.s.set, answered: true };
 }
 
+/** After its first pulse a winder knows no speed yet: a spindle whose count has just grown does not stand. */
+const speedUnknownMs = 1_000;
+
+function stillGoing(boot: BootState, point: Point): boolean {
+	return boot.turning && point.k !== 'stop' && point.t - boot.grownT < speedUnknownMs;
+}
+
 /** Brings a moment of a boot into totals, trail, taps and runs. */
 function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Event, receivedAt: number): void {
 	const { config, s } = d;
@@ -173,9 +180,10 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 	if (late && s.catchingUp) s.catchingUp = { ...s.catchingUp, lastLateAt: receivedAt };
 
 	const deviceGapMs = first ? 0 : point.t - boot.t;
-	const before = { turning: boot.turning, t: boot.t };
+	const before = { turning: boot.turning, sum: boot.f + boot.v };
 	if (!s.run && s.idle?.b !== boot.b) s.idle = { b: boot.b, f: first ? point.f : boot.f, v: first ? point.v : boot.v };
 	const counts = raise(d, boot, point, receivedAt);
+	if (point.f + point.v > before.sum) boot.grownT = Math.max(boot.grownT, point.t);
 	keepTrail(s, point);
 
 	if (!late) {
@@ -184,7 +192,7 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 		boot.r = point.r;
 		if (point.k === 'go') boot.turning = true;
 		else if (point.k === 'stop') boot.turning = false;
-		else if (line.r !== undefined) boot.turning = line.r !== 0;
+		else if (line.r !== undefined) boot.turning = line.r !== 0 || stillGoing(boot, point);
 		else if (first) boot.turning = false;
 		checkSensor(d, boot, line, receivedAt);
 		if (!first && line.verb === 'T') checkClock(d, boot, point.t, receivedAt, gapMs);

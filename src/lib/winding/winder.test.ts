@@ -97,6 +97,37 @@ describe('a coil from start to kept', () => {
 		expect(bench.run.turns).toBe(10);
 	});
 
+	it('does not stand when the first ticks after its go know no speed yet', () => {
+		const bench = started();
+		bench.event('go');
+		bench.now += 300;
+		bench.f += 1;
+		bench.r = 0;
+		bench.tick();
+		bench.turning = true;
+		bench.turn(20, 600, false);
+		expect(bench.count('stopped')).toBe(0);
+		expect(bench.run.state).toBe('winding');
+	});
+
+	it('stands when a winder without events says 0 for a second', () => {
+		const bench = started();
+		for (let i = 1; i <= 20; i += 1) {
+			bench.now += 100;
+			bench.f += 1;
+			bench.r = 600;
+			bench.tick();
+		}
+		bench.r = 0;
+		bench.now += 400;
+		bench.tick();
+		expect(bench.view.turning).toBe(true);
+		bench.now += 700;
+		bench.tick();
+		expect(bench.view.turning).toBe(false);
+		expect(bench.run.state).toBe('paused');
+	});
+
 	it('counts a coil put on a turning winder from when the spindle began to move', () => {
 		const bench = new Bench();
 		bench.hi();
