@@ -359,6 +359,9 @@ export class IngestCore implements Ingest {
 	// ---- the queue
 
 	async queueChanged(workshopId: string): Promise<void> {
+		// A bench on its way into memory has read the queue as it was before.
+		const coming = [...this.#loading].filter(([key]) => key.startsWith(`${workshopId}/`));
+		await Promise.allSettled(coming.map(([, seat]) => seat));
 		const shop = this.#shops.get(workshopId);
 		// No bench is in memory: the next one reads the queue as it comes.
 		if (!shop) return;
@@ -680,11 +683,10 @@ export class IngestCore implements Ingest {
 		}
 		let shop = this.#shops.get(workshopId);
 		if (!shop) {
-			shop = { id: workshopId, next: null, waiting: 0, giving: null, again: false, giveAt: 0, unsure: new Set() };
+			// Only a new shop takes over the queue as it was read here: one that is there may have read it since.
+			shop = { id: workshopId, ...head, giving: null, again: false, giveAt: 0, unsure: new Set() };
 			this.#shops.set(workshopId, shop);
 		}
-		shop.next = head.next;
-		shop.waiting = head.waiting;
 		const seat = new Seat(winder, state, saved.factNo, shop, this.#steady());
 		this.#seats.set(`${workshopId}/${winder.id}`, seat);
 		// The server may have ended after a coil was taken and before this bench had it.
