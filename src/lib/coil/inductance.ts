@@ -87,10 +87,15 @@ function straightsToArcs(
 		const angle = (Math.PI / 2) * u * u;
 		const along = arcRadius * Math.sin(angle);
 		const across = arcRadius * Math.cos(angle);
-		const near = Math.sqrt((across - straightRadius) ** 2 + apart ** 2);
-		const far = Math.sqrt((across + straightRadius) ** 2 + apart ** 2);
-		const over = (distance: number) => Math.asinh((straight + along) / distance) - Math.asinh(along / distance);
-		sum += rule.weight[i]! * Math.PI * u * Math.cos(angle) * (over(near) - over(far));
+		// asinh((S + x)/d) − asinh(x/d) in a form that stands where the arc crosses the straight's line and d is zero.
+		const over = (across: number) => {
+			const square = across * across + apart * apart;
+			return Math.log(
+				(straight + along + Math.sqrt((straight + along) ** 2 + square)) / (along + Math.sqrt(along ** 2 + square))
+			);
+		};
+		sum +=
+			rule.weight[i]! * Math.PI * u * Math.cos(angle) * (over(across - straightRadius) - over(across + straightRadius));
 	}
 	return 4 * arcRadius * sum;
 }
@@ -189,14 +194,10 @@ export function meanLogDistance(width: number, height: number, i: number, k: num
 	return sum / (x * x * y * y) + Math.log(long);
 }
 
-/** `follow` is up to 2 % off and quick: enough for how inductance changes with the window. */
-export type Accuracy = 'full' | 'follow';
-
 /** Cells in the window, from which what infinitely many would give is drawn: the error falls as one over their number. */
 const fineCells = 25;
 const coarseCells = 9;
-/** Always the same, whatever the shape, so that the answer moves without steps. */
-const followGrid: Grid = { columns: 2, rows: 2 };
+const followCells = 4;
 /** Of a winding one wire deep, whose cells cannot be near-square. */
 const cellsInRowMax = 160;
 
@@ -242,8 +243,7 @@ function meanMutualH(window: Window, { columns, rows }: Grid): number {
 	return sum / (columns * rows) ** 2;
 }
 
-function singleTurnH(window: Window, accuracy: Accuracy): number {
-	if (accuracy === 'follow') return meanMutualH(window, followGrid);
+function singleTurnH(window: Window): number {
 	const coarse = nearSquare(window, coarseCells);
 	const fine = nearSquare(window, fineCells);
 	const few = coarse.columns * coarse.rows;
@@ -282,11 +282,23 @@ const windowRefused = (window: Window, turns: number) =>
  *
  * @returns henries
  */
-export function airInductanceH(window: Window, turns: number, accuracy: Accuracy = 'full'): Result<number> {
+export function airInductanceH(window: Window, turns: number): Result<number> {
 	const refused = windowRefused(window, turns);
 	if (refused) return refused;
 	if (turns === 0) return ok(0);
-	return ok(turns ** 2 * remembered(`${accuracy} ${keyOf(window)}`, () => singleTurnH(window, accuracy)));
+	return ok(turns ** 2 * remembered(keyOf(window), () => singleTurnH(window)));
+}
+
+/**
+ * How many times the inductance of one window another near it has, for the same turns. A few cells tell it, of which both
+ * windows have as many, so that it moves without steps.
+ */
+export function inductanceRatio(window: Window, near: Window): Result<number> {
+	const refused = windowRefused(window, 1) ?? windowRefused(near, 1);
+	if (refused) return refused;
+	const grid = nearSquare(window, followCells);
+	const few = (of: Window) => remembered(`${grid.columns} ${grid.rows} ${keyOf(of)}`, () => meanMutualH(of, grid));
+	return ok(few(near) / few(window));
 }
 
 /** A winding and how many turns lie in it. */

@@ -2,7 +2,7 @@ import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { genericBobbins } from './bobbins.ts';
 import { calibrate } from './calibrate.ts';
-import { airInductanceH, mutualBesideH } from './inductance.ts';
+import { airInductanceH, inductanceRatio, mutualBesideH } from './inductance.ts';
 import { halfWidthsOf } from './model.ts';
 import { joinedHenry } from './pickup.ts';
 import { calibratedPermeabilityPart, predict, type PredictionInput } from './predict.ts';
@@ -210,7 +210,6 @@ describe('uncertainty by propagation agrees with Monte Carlo', () => {
 		const predicted = value(predict(input));
 		const nominal = [coilOf(4950), coilOf(4850)];
 		const full = nominal.map((coil) => value(airInductanceH(windowOf(coil), coil.turns)));
-		const quick = nominal.map((coil) => value(airInductanceH(windowOf(coil), coil.turns, 'follow')));
 		const coupling = predicted.mutualAirH / Math.sqrt(full[0]! * full[1]!);
 		const seen: Record<string, number[]> = {};
 		const note = (name: string, figure: number) => (seen[name] ??= []).push(figure);
@@ -223,8 +222,7 @@ describe('uncertainty by propagation agrees with Monte Carlo', () => {
 			const resistanceOhm = (coils[0]!.resistanceOhm + coils[1]!.resistanceOhm) * (1 + scatter);
 			const even = 1 + off(half.airPart);
 			const henries = coils.map(
-				(coil, k) =>
-					(even * full[k]! * value(airInductanceH(windowOf(coil, common.bobbin), coil.turns, 'follow'))) / quick[k]!
+				(coil, k) => even * full[k]! * value(inductanceRatio(windowOf(nominal[k]!), windowOf(coil, common.bobbin)))
 			);
 			const airH = joinedHenry(henries, 'series', coupling * Math.sqrt(henries[0]! * henries[1]!));
 			const inductanceH = airH * 2.4 * (1 + off(half.permeabilityPart));

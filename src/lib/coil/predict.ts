@@ -1,5 +1,5 @@
 import { scaleAt, scatterPrior, type Calibration } from './calibrate.ts';
-import { airInductanceH, inductanceClaims, mutualBesideH, type Window } from './inductance.ts';
+import { airInductanceH, inductanceClaims, inductanceRatio, mutualBesideH, type Window } from './inductance.ts';
 import { turnsMax, within } from './limits.ts';
 import {
 	atValues,
@@ -116,14 +116,10 @@ export function predict(input: PredictionInput): Result<Prediction> {
 	const coils = wind(input, temperatureC);
 	const wound = coils.map((coil) => ({ window: windowOf(input, coil), turns: coil.turns }));
 	const air: number[] = [];
-	const follow: number[] = [];
 	for (const { window, turns: count } of wound) {
 		const full = airInductanceH(window, count);
 		if (!full.ok) return full;
-		const quick = airInductanceH(window, count, 'follow');
-		if (!quick.ok) return quick;
 		air.push(full.value);
-		follow.push(quick.value);
 	}
 	let mutualAirH = 0;
 	const [first, second] = wound;
@@ -166,8 +162,8 @@ export function predict(input: PredictionInput): Result<Prediction> {
 		const now = wind(model, celsius);
 		const scale = (calibration ? scaleAt(calibration, model) : 1) * calibrated * scattered;
 		const henries = now.map((coil, i) => {
-			const moved = airInductanceH(windowOf(model, coil), coil.turns, 'follow');
-			return moved.ok ? (evenness * air[i]! * moved.value) / follow[i]! : air[i]!;
+			const moved = inductanceRatio(wound[i]!.window, windowOf(model, coil));
+			return evenness * air[i]! * (moved.ok ? moved.value : 1);
 		});
 		const ohms = now.map((coil) => coil.resistanceOhm * scale);
 		const resistanceOhm = joinedOhm(ohms, connection);
