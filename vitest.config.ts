@@ -21,6 +21,16 @@ export default mergeConfig(
 				{
 					extends: true,
 					test: {
+						// Against independent programs of the system: units, ngspice, python3-uncertainties.
+						name: 'reference',
+						environment: 'node',
+						include: ['tests/reference/**/*.test.ts'],
+						testTimeout: 60_000
+					}
+				},
+				{
+					extends: true,
+					test: {
 						name: 'database',
 						environment: 'node',
 						include: ['tests/db/**/*.test.ts'],

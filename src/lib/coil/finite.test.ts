@@ -120,7 +120,7 @@ describe('whatever is put in, no NaN and no infinity comes out', () => {
 
 	holds(
 		'of an inductance',
-		60,
+		40,
 		fc.property(wound, wound, near(0, 0.2), (first, second, apart) => {
 			allFinite(airInductanceH(first.window, first.turns));
 			allFinite(inductanceRatio(second.window, { ...second.window, windingDepthM: apart }));
@@ -181,14 +181,14 @@ describe('whatever is put in, no NaN and no infinity comes out', () => {
 				seen[answer.ok ? 'made' : 'refused'] += 1;
 			}
 		);
-		fc.assert(property, { numRuns: 200, endOnFailure: true });
-		expect(seen.made).toBeGreaterThan(20);
-		expect(seen.refused).toBeGreaterThan(5);
+		fc.assert(property, { numRuns: 60, endOnFailure: true });
+		expect(seen.made).toBeGreaterThan(5);
+		expect(seen.refused).toBeGreaterThan(1);
 	});
 
 	holds(
 		'of a request',
-		150,
+		50,
 		fc.property(winding, fc.array(turns, { minLength: 1, maxLength: 2 }), connection, (model, counts, joined) => {
 			const { flangeOuterM, ...core } = model.bobbin;
 			const parsed = predictionRequest.safeParse({
