@@ -138,7 +138,8 @@ const factWords: Record<FactKind, (fact: ToldFact) => string> = {
 	'clock-odd': () => 'The winder’s clock ran fast or slow; the count is right, speeds are not to be relied on',
 	'two-winders': () => 'Two winders share this name',
 	'caught-up': () => 'Lines that had waited arrived; the count caught up',
-	'wrong-way': () => 'The spindle turned the other way than this coil asks for'
+	'wrong-way': () => 'The spindle turned the other way than this coil asks for',
+	'signed-off': () => 'The winder signed off'
 };
 
 export function factText(kind: string, fact: ToldFact): string {
@@ -198,6 +199,7 @@ const noticeWords: Record<Notice, string> = {
 	'two-winders': 'Two winders share this name. Give each its own link key.',
 	'line-errors': 'More than 1 in 100 lines arrive damaged. Look at the cable or the radio.',
 	'wrong-way': 'The spindle turns the other way than the coil asks for.',
+	'signed-off': 'The winder has signed off: it was switched off in order.',
 	'catching-up': 'Lines that waited are arriving.'
 };
 

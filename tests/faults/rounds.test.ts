@@ -43,7 +43,8 @@ async function killDatabase(): Promise<void> {
 /** Kills one thing after another at seeded moments, until told to stop. */
 async function killNowAndThen(server: TestServer, seed: number, ended: () => boolean): Promise<string[]> {
 	const random = randomFrom(seed, 'kills');
-	const victims = ['server', 'database', 'server'].sort(() => random() - 0.5);
+	// The database never last: a round of short coils may be over before the third.
+	const victims = seed % 2 === 0 ? ['database', 'server', 'server'] : ['server', 'database', 'server'];
 	const killed: string[] = [];
 	for (const victim of victims) {
 		await pause(between(random, 1_500, 4_000));
@@ -85,6 +86,54 @@ function truthOf(results: SimulationResult[], winder: TestWinder): WinderResult 
 	return found;
 }
 
+/** The session cookie of the workshop's maker, got as the sign-in page gets it. */
+async function signIn(server: TestServer): Promise<string> {
+	const { email, password } = server.workshop.maker;
+	const answer = await fetch(`${server.url}/sign-in`, {
+		method: 'POST',
+		headers: { origin: server.url },
+		body: new URLSearchParams({ email, password }),
+		redirect: 'manual'
+	});
+	const cookies = answer.headers.getSetCookie().map((cookie) => cookie.split(';')[0]);
+	expect(cookies.length, `signed in (${answer.status})`).toBeGreaterThan(0);
+	return cookies.join('; ');
+}
+
+/** Each coil is kept by one tap that is sent until it is answered, with the server killed on the way. */
+async function keepAll(server: TestServer, winders: TestWinder[], results: SimulationResult[]): Promise<void> {
+	const cookie = await signIn(server);
+	const tapped = Promise.all(
+		winders.map(async (winder) => {
+			const body = JSON.stringify({ id: crypto.randomUUID(), kind: 'keep', ageMs: 0 });
+			const headers = { cookie, origin: server.url, 'content-type': 'application/json' };
+			for (;;) {
+				const answer = await fetch(`${server.url}/api/v1/winders/${winder.id}/taps`, {
+					method: 'POST',
+					headers,
+					body
+				}).catch(() => null);
+				if (answer?.ok) return;
+				if (answer && answer.status < 500) throw new Error(`${winder.name}: ${answer.status} ${await answer.text()}`);
+				await pause(100);
+			}
+		})
+	);
+	await server.kill();
+	await server.start();
+	await tapped;
+	for (const winder of winders) {
+		const truth = truthOf(results, winder).boots[0]!;
+		const runs = await inWorkshop(server.database.owner, server.workshop.id, (trx) =>
+			trx.selectFrom('run').selectAll().where('winder_id', '=', winder.id).where('state', '=', 'kept').execute()
+		);
+		expect(
+			runs.map((run) => run.turns),
+			`${winder.name}: kept once, with the turns of the truth`
+		).toEqual([truth.forward - truth.reverse]);
+	}
+}
+
 describe('kills and bad links', () => {
 	it.each(Array.from({ length: rounds }, (_, i) => firstSeed + i))(
 		'round %i loses no acknowledged event and no turn',
@@ -108,7 +157,7 @@ describe('kills and bad links', () => {
 				const results = await Promise.all(simulations.map((simulation) => simulation.done));
 				ended = true;
 				const killed = await kills;
-				expect(killed.length, 'something was killed while they wound').toBeGreaterThan(0);
+				expect(killed, 'both were killed while they wound').toEqual(expect.arrayContaining(['server', 'database']));
 
 				for (const winder of winders) {
 					const truth = truthOf(results, winder);
@@ -133,6 +182,7 @@ describe('kills and bad links', () => {
 					expect(live.net).toBe(boot.forward - boot.reverse);
 					expect(live.run?.target).toBe(1_500);
 				}
+				await keepAll(server, winders, results);
 			} finally {
 				await server.remove();
 			}

@@ -47,6 +47,8 @@ export interface BootState {
 	/** Signed rpm at that moment. */
 	r: number;
 	turning: boolean;
+	/** Wall ms at which it said goodbye; null while it is heard. */
+	signedOffAt: number | null;
 	/** Moment at which the totals last grew. */
 	grownT: number;
 	x: number;
@@ -99,6 +101,7 @@ export function newBoot(b: string, t: number, receivedAt: number, timeScale: num
 		t: -1,
 		r: 0,
 		turning: false,
+		signedOffAt: null,
 		grownT: -1,
 		x: 0,
 		g: 0,

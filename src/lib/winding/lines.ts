@@ -1,5 +1,5 @@
 import type { DeviceLine, Event, Hi, Tick } from '../turnline/types.ts';
-import { waitingTaps } from './acts.ts';
+import { settle, waitingTaps } from './acts.ts';
 import {
 	addEvent,
 	addLine,
@@ -17,7 +17,7 @@ import {
 } from './boot.ts';
 import { moveSeen, follow } from './follow.ts';
 import { checkSensor, checkClock, checkPulses } from './sensor.ts';
-import { type WinderState, type Draft, draft, sayFault, notice } from './state.ts';
+import { type WinderState, type Draft, draft, say, sayFault, notice } from './state.ts';
 import { enterBoot, maybeBridge, watchForTwins, raise, keepTrail } from './totals.ts';
 import type { Fact, WinderConfig } from './types.ts';
 
@@ -70,7 +70,10 @@ export function takeLine(state: WinderState, config: WinderConfig, line: DeviceL
 		takeAnswer(d, line.b, line.verb === 'OK', line.id, line.why);
 		return done('thinned');
 	}
-	if (line.verb === 'BYE') return done('thinned');
+	if (line.verb === 'BYE') {
+		takeGoodbye(d, line.b);
+		return done('thinned');
+	}
 
 	let boot = d.s.boots.find((known) => known.b === line.b);
 	const fresh = !boot;
@@ -137,6 +140,18 @@ function worthKeeping(boot: BootState, point: Point): boolean {
 	return boot.keepNext || point.t - boot.keptT >= keepTickMs || point.f + point.v - boot.keptTurns >= keepTickTurns;
 }
 
+/**
+ * The last line before the power goes: no more lines come, so the spindle stands for all anybody can know, and a tap that
+ * waits for lines is placed at the last of them.
+ */
+function takeGoodbye(d: Draft, b: string | undefined): void {
+	const boot = d.s.boots[0];
+	if (!boot || (b !== undefined && b !== boot.b)) return;
+	boot.signedOffAt = d.now;
+	say(d, 'signed-off', d.now);
+	if (d.s.run?.pending?.b === boot.b) settle(d, d.s.run, true);
+}
+
 function takeAnswer(d: Draft, b: string, ok: boolean, id: number | undefined, why: string | undefined): void {
 	const boot = d.s.boots.find((known) => known.b === b);
 	if (boot && !ok && why === 'gone') {
@@ -189,6 +204,7 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 	if (!late) {
 		boot.t = point.t;
 		boot.lastAt = receivedAt;
+		boot.signedOffAt = null;
 		boot.r = point.r;
 		if (point.k === 'go') boot.turning = true;
 		else if (point.k === 'stop') boot.turning = false;

@@ -281,13 +281,15 @@ export function figuresOf(run: RunCore, boots: readonly BootState[], nowAxis: nu
 	const windingMs = run.startAxis === null ? 0 : windingMsOf(run, until);
 	const allMs = run.startAxis === null ? 0 : Math.max(0, until - run.startAxis);
 	const takenBack = takenBackOf(run, boots, oneSensor);
+	const rpmMean = windingMs > 0 ? Math.round(((turns + takenBack) / windingMs) * 60_000) : 0;
 	return {
 		turns,
 		onBobbin: onBobbinOf(run, turns),
 		windingMs: Math.round(windingMs),
 		stoppedMs: Math.round(Math.max(0, allMs - windingMs)),
-		rpmMean: windingMs > 0 ? Math.round(((turns + takenBack) / windingMs) * 60_000) : 0,
-		rpmTop: run.rpmTop,
+		rpmMean,
+		// A winder that says no speed has a top all the same.
+		rpmTop: Math.max(run.rpmTop, rpmMean),
 		looks: run.looks,
 		snaps: run.snaps,
 		takenBack,

@@ -56,7 +56,7 @@ export function takeTap(
 			afterAt: null
 		};
 		if (run.pending.after) run.pending.afterAt = now;
-		settle(d, run, false);
+		settle(d, run, boot.signedOffAt !== null);
 		pending = run.pending !== null;
 		if (pending) say(d, 'tap-waiting', madeAt, { detail: { tap: tap.kind }, memberId: tap.memberId });
 	} else if (tap.kind === 'undo') undo(d, run, tap);
@@ -72,7 +72,7 @@ function whyNot(d: Draft, tap: Tap): TapRefusal | null {
 	if (!run) return 'no-run';
 	const boot = d.s.boots[0];
 	const onBobbin = onBobbinNow(d, run);
-	const heard = boot ? linkStateOf(d.now - boot.lastAt, boot.turning) : 'never';
+	const heard = boot && boot.signedOffAt === null ? linkStateOf(d.now - boot.lastAt, boot.turning) : 'no-signal';
 	// Turning counts only while it is seen: with the link down a maker may tap at a spindle that stands.
 	const turning = boot !== undefined && boot.turning && heard !== 'no-signal';
 	const begun = run.startedAt !== null;

@@ -43,7 +43,15 @@ export function enterBoot(d: Draft, boot: BootState, line: Hi | Tick | Event): v
 		const gapMs = Math.max(0, bornAt - before.lastAt) * d.config.timeScale;
 		const uncertain = gapMs <= restartBoundMs ? Math.ceil((Math.abs(before.r) / 60_000) * gapMs) : null;
 		const at = onBobbinNow(d, run);
-		ask(run, { kind: 'restarted', at, uncertainTurns: uncertain });
+		// A second restart before the first was answered: what is uncertain adds up.
+		const open = run.questionDetail?.kind === 'restarted' ? run.questionDetail : null;
+		const uncertainTurns =
+			open && uncertain !== null && open.uncertainTurns !== null
+				? open.uncertainTurns + uncertain
+				: open
+					? null
+					: uncertain;
+		ask(run, { kind: 'restarted', at, uncertainTurns });
 		sayFault(d, 'restarted', bornAt, { at, uncertain });
 	}
 	while (d.s.boots.length > bootsMax) forgetBoot(d, d.s.boots[d.s.boots.length - 1]!);

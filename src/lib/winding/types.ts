@@ -195,7 +195,8 @@ export const factKinds = [
 	'clock-odd',
 	'two-winders',
 	'caught-up',
-	'wrong-way'
+	'wrong-way',
+	'signed-off'
 ] as const;
 export type FactKind = (typeof factKinds)[number];
 
@@ -208,7 +209,8 @@ export const notices = [
 	'two-winders',
 	'line-errors',
 	'wrong-way',
-	'catching-up'
+	'catching-up',
+	'signed-off'
 ] as const;
 export type Notice = (typeof notices)[number];
 

@@ -18,6 +18,7 @@ export function viewOf(state: WinderState, config: WinderConfig, now: number): W
 	const turning = boot?.turning ?? false;
 	const standing: Notice[] = state.notices.filter(([, until]) => until > now).map(([kind]) => kind);
 	if (state.catchingUp) standing.push('catching-up');
+	if (boot?.signedOffAt != null) standing.push('signed-off');
 	return {
 		at: now,
 		seesDirection: config.seesDirection,
@@ -28,7 +29,7 @@ export function viewOf(state: WinderState, config: WinderConfig, now: number): W
 		rpm: boot && turning ? boot.r : 0,
 		turning,
 		ageMs,
-		link: linkStateOf(ageMs, turning),
+		link: boot?.signedOffAt != null ? 'no-signal' : linkStateOf(ageMs, turning),
 		notices: standing,
 		run: state.run && runView(state, config, state.run, turning),
 		last: state.last,

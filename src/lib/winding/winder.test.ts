@@ -446,6 +446,35 @@ describe('a tap while the link is down', () => {
 	});
 });
 
+describe('a winder that says goodbye', () => {
+	it('is signed off at once, not lost, and comes back with its next line', () => {
+		const bench = started();
+		bench.turn(20);
+		bench.stand();
+		bench.give({ verb: 'BYE', b: bench.b });
+		expect(bench.view.link).toBe('no-signal');
+		expect(bench.view.notices).toContain('signed-off');
+		bench.wait(2_000);
+		bench.tick();
+		expect(bench.view.link).toBe('live');
+		expect(bench.view.notices).not.toContain('signed-off');
+	});
+
+	it('lets a tap made after it, or waiting for it, stand at its last count', () => {
+		for (const order of ['before', 'after']) {
+			const bench = started({}, { lookEvery: 0 });
+			bench.turn(1200);
+			bench.stand();
+			bench.wait(300);
+			if (order === 'before') expect(bench.tap({ kind: 'keep' })).toEqual({ ok: true, pending: true });
+			bench.give({ verb: 'BYE', b: bench.b });
+			if (order === 'after') expect(bench.tap({ kind: 'keep' })).toEqual({ ok: true, pending: false });
+			expect(bench.run.state).toBe('kept');
+			expect(bench.run.turns).toBe(1200);
+		}
+	});
+});
+
 describe('keep', () => {
 	const onCount = () => {
 		const bench = started({}, { lookEvery: 0 });
@@ -534,6 +563,17 @@ describe('a restart in the middle of a coil', () => {
 		bench.tap({ kind: 'go-on' });
 		expect(bench.run.question).toBeNull();
 		expect(bench.run.turns).toBe(90);
+	});
+
+	it('twice before an answer adds up what is uncertain', () => {
+		const bench = started({}, { target: 5000 });
+		bench.turn(600, 450, false);
+		bench.restart('77AA01F3', 1_200);
+		bench.hi();
+		bench.turn(30, 450, false);
+		bench.restart('77AA01F4', 1_200);
+		bench.hi();
+		expect(bench.run.questionDetail).toEqual({ kind: 'restarted', at: 630, uncertainTurns: 18 });
 	});
 
 	it('with retained totals is bridged silently', () => {
