@@ -5,6 +5,8 @@ import { inWorkshop } from '../../src/lib/server/db/connect.ts';
 import { testEnv } from '../../src/lib/server/env.ts';
 import { randomFrom, between } from '../../simulator/random.ts';
 import { startSimulation, type SimulationResult, type WinderResult } from '../../simulator/run.ts';
+import type { TruthBoot } from '../../simulator/winder.ts';
+import { formatLine } from '../../src/lib/turnline/index.ts';
 import { makeTemplate } from '../db/harness.ts';
 import { startServer, type TestServer, type TestWinder } from '../e2e/server.ts';
 
@@ -100,6 +102,30 @@ async function signIn(server: TestServer): Promise<string> {
 	return cookies.join('; ');
 }
 
+/** A tap waits for a line from beyond it: the winder, standing still, says its totals again. */
+async function speakOnceMore(server: TestServer, winder: TestWinder, truth: TruthBoot): Promise<void> {
+	const cursor = (await winderRows(server, winder)).boots.find((row) => row.boot === truth.boot);
+	if (!cursor) throw new Error(`nothing is stored of ${winder.name}`);
+	const line = formatLine({
+		verb: 'HI',
+		p: 1,
+		dev: winder.name,
+		b: truth.boot,
+		n: cursor.n,
+		e: cursor.e,
+		f: truth.forward,
+		v: truth.reverse,
+		r: 0,
+		t: Math.round(cursor.t + (Date.now() - cursor.last_at.getTime() + 1_000) * speedUp)
+	});
+	const answer = await fetch(`${server.url}/api/v1/winders/${winder.id}/lines`, {
+		method: 'POST',
+		headers: { authorization: `Bearer ${winder.linkKey}`, 'content-type': 'text/plain' },
+		body: `${line}\n`
+	});
+	expect(answer.status).toBe(200);
+}
+
 /** Each coil is kept by one tap that is sent until it is answered, with the server killed on the way. */
 async function keepAll(server: TestServer, winders: TestWinder[], results: SimulationResult[]): Promise<void> {
 	const cookie = await signIn(server);
@@ -124,6 +150,7 @@ async function keepAll(server: TestServer, winders: TestWinder[], results: Simul
 	await tapped;
 	for (const winder of winders) {
 		const truth = truthOf(results, winder).boots[0]!;
+		await speakOnceMore(server, winder, truth);
 		const runs = await inWorkshop(server.database.owner, server.workshop.id, (trx) =>
 			trx.selectFrom('run').selectAll().where('winder_id', '=', winder.id).where('state', '=', 'kept').execute()
 		);

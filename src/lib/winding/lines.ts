@@ -168,6 +168,10 @@ function stillGoing(boot: BootState, point: Point): boolean {
 	return boot.turning && point.k !== 'stop' && point.t - boot.grownT < speedUnknownMs;
 }
 
+function movedSince(boot: BootState, trail: readonly Point[], stop: Point): boolean {
+	return boot.grownT > stop.t || trail.some((point) => point.k === 'go' && point.t > stop.t);
+}
+
 /** Brings a moment of a boot into totals, trail, taps and runs. */
 function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Event, receivedAt: number): void {
 	const { config, s } = d;
@@ -214,8 +218,14 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 		if (!first && line.verb === 'T') checkClock(d, boot, point.t, receivedAt, gapMs);
 		checkPulses(d, boot, point);
 	}
+	// A stop that comes after a later tick: nothing has been counted since, so it is how the spindle is now.
+	const stillStands = late && point.k === 'stop' && boot.turning && !movedSince(boot, s.trail, point);
+	if (stillStands) {
+		boot.turning = false;
+		boot.r = 0;
+	}
 	if (counts) {
-		if (late) moveSeen(d, boot, point);
+		if (late && !stillStands) moveSeen(d, boot, point);
 		else follow(d, boot, point, before.turning, deviceGapMs);
 	}
 	waitingTaps(d, boot, point, receivedAt);

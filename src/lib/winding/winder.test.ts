@@ -128,6 +128,23 @@ describe('a coil from start to kept', () => {
 		expect(bench.run.state).toBe('paused');
 	});
 
+	it('stands when its stop comes after a later tick', () => {
+		const bench = started();
+		bench.turn(20);
+		bench.down = true;
+		bench.now += 500;
+		bench.event('stop');
+		bench.down = false;
+		bench.now += 100;
+		bench.r = 0;
+		bench.tick();
+		expect(bench.view.turning).toBe(true);
+		bench.give(bench.held[0]!);
+		expect(bench.view.turning).toBe(false);
+		expect(bench.run.state).toBe('paused');
+		expect(bench.count('stopped')).toBe(1);
+	});
+
 	it('counts a coil put on a turning winder from when the spindle began to move', () => {
 		const bench = new Bench();
 		bench.hi();
