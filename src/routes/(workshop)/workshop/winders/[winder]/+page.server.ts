@@ -1,3 +1,4 @@
+import { randomBytes } from 'node:crypto';
 import { error, fail, redirect } from '@sveltejs/kit';
 import { turnstead } from '$lib/server/app';
 import { guard } from '$lib/server/auth/guard';
@@ -30,6 +31,7 @@ export const load: PageServerLoad = async ({ locals, params, url }) => {
 		},
 		typed: settingsOf(winder),
 		origin: url.origin,
+		recipeBoot: randomBytes(4).toString('hex').toUpperCase(),
 		link: await linkNow(workshopId, winder.id)
 	};
 };
