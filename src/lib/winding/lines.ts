@@ -164,12 +164,13 @@ function takeAnswer(d: Draft, b: string, ok: boolean, id: number | undefined, wh
 /** After its first pulse a winder knows no speed yet: a spindle whose count has just grown does not stand. */
 const speedUnknownMs = 1_000;
 
-function stillGoing(boot: BootState, point: Point): boolean {
-	return boot.turning && point.k !== 'stop' && point.t - boot.grownT < speedUnknownMs;
+function stillGoing(boot: BootState, point: Point, gapMs: number): boolean {
+	// After a gap the count may have grown at any moment of it: then the speed said is all there is.
+	return boot.turning && gapMs < speedUnknownMs && point.t - boot.grownT < speedUnknownMs;
 }
 
 function movedSince(boot: BootState, trail: readonly Point[], stop: Point): boolean {
-	return boot.grownT > stop.t || trail.some((point) => point.k === 'go' && point.t > stop.t);
+	return boot.f + boot.v > stop.f + stop.v || trail.some((point) => point.k === 'go' && point.t > stop.t);
 }
 
 /** Brings a moment of a boot into totals, trail, taps and runs. */
@@ -212,7 +213,7 @@ function advance(d: Draft, boot: BootState, point: Point, line: Hi | Tick | Even
 		boot.r = point.r;
 		if (point.k === 'go') boot.turning = true;
 		else if (point.k === 'stop') boot.turning = false;
-		else if (line.r !== undefined) boot.turning = line.r !== 0 || stillGoing(boot, point);
+		else if (line.r !== undefined) boot.turning = line.r !== 0 || stillGoing(boot, point, deviceGapMs);
 		else if (first) boot.turning = false;
 		checkSensor(d, boot, line, receivedAt);
 		if (!first && line.verb === 'T') checkClock(d, boot, point.t, receivedAt, gapMs);

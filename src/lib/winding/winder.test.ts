@@ -128,6 +128,18 @@ describe('a coil from start to kept', () => {
 		expect(bench.run.state).toBe('paused');
 	});
 
+	it('stands when it comes back from a gap and says no speed', () => {
+		const bench = started();
+		bench.turn(20, 600, false);
+		bench.down = true;
+		bench.turn(30);
+		bench.stand();
+		bench.down = false;
+		bench.hi({ r: 0 });
+		expect(bench.run.turns).toBe(50);
+		expect(bench.view.turning).toBe(false);
+	});
+
 	it('stands when its stop comes after a later tick', () => {
 		const bench = started();
 		bench.turn(20);
