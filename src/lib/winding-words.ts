@@ -147,6 +147,50 @@ export function factText(kind: string, fact: ToldFact): string {
 	return kind in factWords ? factWords[kind as FactKind](fact) : kind.replaceAll('-', ' ');
 }
 
+/** A spindle rocked at the start stands and goes on within this; no hand has done anything meanwhile. */
+const rockingMsMax = 2_000;
+/** Lines lag behind every tap a little; a longer wait is worth a word. */
+const tapWaitMsMin = 3_000;
+
+interface RecordedFact extends ToldFact {
+	kind: string;
+	at: Date;
+}
+
+/**
+ * The facts of a run worth reading, in order: without standing still and going on at the same place within two seconds, and
+ * without taps that waited for no longer than lines always take. The record itself keeps them all.
+ */
+export function factsWorthTelling<Told extends RecordedFact>(facts: readonly Told[]): Told[] {
+	return facts.filter((fact, i) => {
+		const [before, after] = [facts[i - 1], facts[i + 1]];
+		if (fact.kind === 'stopped') return !(after && isRocking(fact, after));
+		if (fact.kind === 'went-on') return !(before && isRocking(before, fact));
+		return fact.kind !== 'tap-waiting' || waitedLong(fact, facts.slice(i + 1));
+	});
+}
+
+function isRocking(stood: RecordedFact, went: RecordedFact): boolean {
+	return (
+		stood.kind === 'stopped' &&
+		went.kind === 'went-on' &&
+		stood.turns === went.turns &&
+		went.at.getTime() - stood.at.getTime() <= rockingMsMax
+	);
+}
+
+/** A tap's own fact stands at the moment of the tap: how long it waited shows in what was recorded until then. */
+function waitedLong(tap: RecordedFact, later: readonly RecordedFact[]): boolean {
+	const closes = ({ kind }: RecordedFact) => kind === 'kept' || kind === 'set-aside';
+	const closing = ['keep', 'set-aside'].includes(word(tap, 'tap') ?? '') ? later.findIndex(closes) : 0;
+	if (closing < 0 || later.length === 0) return true;
+	const meanwhile = later.slice(0, closing + 1);
+	const next = later[closing + 1];
+	// Lines that come late settle the tap, and that they came is recorded right after.
+	if (next?.kind === 'caught-up') meanwhile.push(next);
+	return meanwhile.some(({ at }) => at.getTime() - tap.at.getTime() > tapWaitMsMin);
+}
+
 /** Faults seen during a run, short, for a list. */
 export function faultText(kind: string): string {
 	return factText(kind, { turns: null, detail: {} });
@@ -182,13 +226,15 @@ export function questionText(question: Question): string {
 
 const linkWords: Record<LinkState, string> = {
 	live: 'live',
-	old: 'late: the last line is a little old',
+	old: 'old',
 	'no-signal': 'no signal',
 	never: 'never linked'
 };
 
-export function linkText(link: LinkState): string {
-	return linkWords[link];
+/** @param ageMs of the last line, told with an old link; null where it stands beside anyway */
+export function linkText(link: LinkState, ageMs: number | null = null): string {
+	if (link !== 'old' || ageMs === null) return linkWords[link];
+	return `${linkWords.old}: last line ${wholeText(ageMs / 1000)} s ago`;
 }
 
 const noticeWords: Record<Notice, string> = {

@@ -9,6 +9,8 @@ export interface BenchRow {
 	winderId: string;
 	name: string;
 	link: LinkState;
+	/** Of the last line; null before any. */
+	ageMs: number | null;
 	hasLinkKey: boolean;
 	notices: Notice[];
 	/** false: counting, not saving. */
@@ -58,6 +60,7 @@ export async function windNow(db: App.Locals['db'], workshopId: string): Promise
 				winderId: winder.id,
 				name: winder.name,
 				link: view?.link ?? 'never',
+				ageMs: view?.ageMs ?? null,
 				hasLinkKey: winder.hasLinkKey,
 				notices: view?.notices ?? [],
 				saving: view?.saving ?? true,

@@ -7,7 +7,7 @@ import { addCoil, findCoil } from '$lib/server/db/coils';
 import { inWorkshop } from '$lib/server/db/connect';
 import { factsOfRun, findRun, noteRun, traceOfRun } from '$lib/server/db/runs';
 import { lengthOf, typedText } from '$lib/typed-values';
-import { factText, faultText } from '$lib/winding-words';
+import { factsWorthTelling, factText, faultText } from '$lib/winding-words';
 import { tracePoints } from './trace';
 import type { Actions, PageServerLoad } from './$types';
 
@@ -54,7 +54,7 @@ export const load: PageServerLoad = async ({ locals, params }) => {
 		},
 		liveState: live?.state ?? null,
 		faults: (live?.faults ?? run.faults).map((kind) => faultText(kind)),
-		happened: facts.map((fact) => ({
+		happened: factsWorthTelling(facts).map((fact) => ({
 			no: fact.no,
 			at: fact.at,
 			text: factText(fact.kind, fact),
