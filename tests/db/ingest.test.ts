@@ -120,6 +120,46 @@ describe('lines', () => {
 		expect((await send(third)).duplicate).toBe(0);
 	});
 
+	it('are all kept while their winder is asked for in another spelling of its id', async () => {
+		await queueCoil(db, shop.id, 'neck', 500);
+		const capitals = shop.winderId.toUpperCase();
+		const counter = new Counter(clock, '5C0E91A7');
+		await send([counter.hi()]);
+		for (let batch = 0; batch < 25; batch++) {
+			const lines = counter.wind(3);
+			const [sent, shown] = await Promise.all([
+				ingest.receive(
+					{ workshopId: shop.id, winderId: batch % 2 ? capitals : shop.winderId },
+					lines,
+					'http',
+					clock.now
+				),
+				ingest.view(shop.id, capitals)
+			]);
+			expect(ok(sent)).toMatchObject({ duplicate: 0, ack: { n: counter.n, e: counter.e } });
+			expect(shown?.winderId).toBe(shop.winderId);
+		}
+		expect(await view()).toMatchObject({ forward: 75, run: { turns: 75 } });
+		const kept = await facts();
+		expect(kept.map((fact) => fact.no)).toEqual(kept.map((_, i) => i + 1));
+		expect(kept.filter((fact) => fact.kind === 'stopped')).toHaveLength(25);
+		expect(ingest.linkLog(shop.id, capitals)).toEqual(ingest.linkLog(shop.id, shop.winderId));
+		const watcher = live.open(shop.id, capitals);
+		expect(live.watchers(shop.id, shop.winderId)).toBe(1);
+		watcher.end();
+	});
+
+	it('that come while their winder is being read in two spellings find one bench', async () => {
+		const { ingest: fresh } = start();
+		const counter = new Counter(clock, '5C0E91A7');
+		const to = (winderId: string, lines: string[]) =>
+			fresh.receive({ workshopId: shop.id, winderId }, lines, 'http', clock.now);
+		const batches = [[counter.hi(), counter.tick(1)], [counter.tick(1)]] as const;
+		await Promise.all([to(shop.winderId, [...batches[0]]), to(shop.winderId.toUpperCase(), [...batches[1]])]);
+		expect(await view(fresh)).toMatchObject({ forward: 2 });
+		expect(await view(fresh, shop.winderId.toUpperCase())).toMatchObject({ forward: 2 });
+	});
+
 	it('of too many at once are refused', async () => {
 		const lines = Array.from({ length: linesAtOnceMax + 1 }, () => '');
 		expect(await ingest.receive(ref(), lines, 'http', clock.now)).toEqual({ ok: false, why: 'too-many-lines' });

@@ -3,6 +3,7 @@ import { afterAll, beforeAll, beforeEach, describe, expect, it } from 'vitest';
 import { takeNextCoil } from '../../src/lib/server/db/coils.ts';
 import { inWorkshop } from '../../src/lib/server/db/connect.ts';
 import {
+	FactNumberTaken,
 	findTap,
 	readWinder,
 	sweepLines,
@@ -151,6 +152,19 @@ describe('a batch', () => {
 		const coil = await db.owner.selectFrom('coil').selectAll().where('id', '=', coilId).executeTakeFirstOrThrow();
 		expect(coil).toMatchObject({ state: 'on-bench', winder_id: second.winderId });
 		expect(await lineCount()).toBe(1);
+	});
+
+	it('with a fact under the number of another is refused as a whole', async () => {
+		const first = fact(1, { tapId: randomUUID() });
+		await writeBatch(db.app, [write({ facts: [first] })]);
+		await writeBatch(db.app, [write({ facts: [first, fact(2)] })]);
+		for (const other of [{ kind: 'kept' as const }, { turns: 5 }, { detail: { mark: 501 } }, { at: at + 1 }]) {
+			const clash = write({ lines: [line(1)], facts: [fact(3), { ...first, ...other }] });
+			await expect(writeBatch(db.app, [clash])).rejects.toBeInstanceOf(FactNumberTaken);
+		}
+		await expect(writeBatch(db.app, [write({ facts: [fact(3), fact(3, { turns: 9 })] })])).rejects.toThrow('Fact 3');
+		expect(await lineCount()).toBe(0);
+		expect((await saved()).factNo).toBe(2);
 	});
 
 	it('cannot write into another workshop than it names', async () => {

@@ -4,3 +4,8 @@ const uuid = /^[0-9a-f]{8}-[0-9a-f]{4}-[0-9a-f]{4}-[0-9a-f]{4}-[0-9a-f]{12}$/i;
 export function isUuid(text: string): boolean {
 	return uuid.test(text);
 }
+
+/** The one spelling of an id, as PostgreSQL writes it: what is kept in memory by its id must not be there twice. */
+export function canonicalId(id: string): string {
+	return id.toLowerCase();
+}

@@ -85,6 +85,15 @@ export interface WinderWrite {
 	snapshot: { state: object; factNo: number; at: number } | null;
 }
 
+/**
+ * A fact's number is taken by another fact: two writers number the facts of one winder. Its code is that of a unique
+ * violation, which it is.
+ */
+export class FactNumberTaken extends Error {
+	override readonly name = 'FactNumberTaken';
+	readonly code = '23505';
+}
+
 /** A trace is drawn on a screen or a sheet: more points than this show nothing more. */
 export const tracePointsMax = 2_000;
 /** Lines swept in one statement, so that a sweep never holds a lock for long. */
@@ -172,10 +181,9 @@ async function upsertCursors(trx: Trx, workshopId: string, writes: WinderWrite[]
 async function insertFacts(trx: Trx, workshopId: string, writes: WinderWrite[]): Promise<void> {
 	const rows = writes.flatMap((write) => write.facts.map((fact) => ({ ...fact, winderId: write.winderId })));
 	if (rows.length === 0) return;
-	await sql`
-		insert into fact (workshop_id, winder_id, no, run_id, kind, at, turns, detail, member_id, tap_id)
-		select ${workshopId}::uuid, row.winder_id, row.no, row.run_id, row.kind, to_timestamp(row.at_ms / 1000.0),
-			row.turns, row.detail::jsonb, row.member_id, row.tap_id
+	const given = sql`
+		select row.winder_id, row.no, row.run_id, row.kind, to_timestamp(row.at_ms / 1000.0) as at,
+			row.turns, row.detail::jsonb as detail, row.member_id, row.tap_id
 		from unnest(
 			${rows.map((row) => row.winderId)}::uuid[], ${rows.map((row) => row.no)}::bigint[],
 			${rows.map((row) => row.runId)}::uuid[], ${rows.map((row) => row.kind)}::text[],
@@ -183,8 +191,27 @@ async function insertFacts(trx: Trx, workshopId: string, writes: WinderWrite[]):
 			${rows.map((row) => (row.turns === null ? null : Math.round(row.turns)))}::integer[],
 			${rows.map((row) => JSON.stringify(row.detail))}::text[], ${rows.map((row) => row.memberId)}::uuid[],
 			${rows.map((row) => row.tapId)}::uuid[]
-		) as row (winder_id, no, run_id, kind, at_ms, turns, detail, member_id, tap_id)
+		) as row (winder_id, no, run_id, kind, at_ms, turns, detail, member_id, tap_id)`;
+	const inserted = await sql`
+		insert into fact (workshop_id, winder_id, no, run_id, kind, at, turns, detail, member_id, tap_id)
+		select ${workshopId}::uuid, given.* from (${given}) as given
 		on conflict (workshop_id, winder_id, no) do nothing`.execute(trx);
+	if (Number(inserted.numAffectedRows ?? 0n) === rows.length) return;
+	// Some were there: the same ones, written by a try whose answer was lost. A coil put back took its run off them.
+	const taken = await sql<{ winder_id: string; no: number; kind: string; stored: string }>`
+		select given.winder_id, given.no, given.kind, fact.kind as stored
+		from (${given}) as given
+		join fact on fact.workshop_id = ${workshopId}::uuid and fact.winder_id = given.winder_id and fact.no = given.no
+		where (fact.kind, fact.at, fact.detail) <> (given.kind, given.at, given.detail)
+			or fact.turns is distinct from given.turns or fact.member_id is distinct from given.member_id
+			or fact.tap_id is distinct from given.tap_id or fact.run_id <> given.run_id
+			or (fact.run_id is not null and given.run_id is null)
+		limit 1`.execute(trx);
+	const other = taken.rows[0];
+	if (!other) return;
+	throw new FactNumberTaken(
+		`Fact ${other.no} of winder ${other.winder_id} is "${other.stored}" on disk and "${other.kind}" here.`
+	);
 }
 
 async function upsertSnapshots(trx: Trx, workshopId: string, writes: WinderWrite[]): Promise<void> {
@@ -361,6 +388,12 @@ export async function readWinder(trx: Trx, workshopId: string, winderId: string)
 		.where('workshop_id', '=', workshopId)
 		.where('winder_id', '=', winderId)
 		.executeTakeFirst();
+	const { last_fact } = await trx
+		.selectFrom('fact')
+		.select((eb) => eb.fn.max('no').as('last_fact'))
+		.where('workshop_id', '=', workshopId)
+		.where('winder_id', '=', winderId)
+		.executeTakeFirstOrThrow();
 	const boots = await trx
 		.selectFrom('boot')
 		.selectAll()
@@ -384,7 +417,8 @@ export async function readWinder(trx: Trx, workshopId: string, winderId: string)
 		.execute();
 	return {
 		state: state?.state ?? null,
-		factNo: state?.fact_no ?? 0,
+		// No number is given out twice, even where the state is older than the facts.
+		factNo: Math.max(state?.fact_no ?? 0, Number(last_fact ?? 0)),
 		cursors: boots.map((row) => ({
 			b: row.boot,
 			n: row.n,

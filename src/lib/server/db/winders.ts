@@ -1,7 +1,7 @@
 import { createHash, randomBytes } from 'node:crypto';
 import { sql, type Kysely, type Selectable, type Transaction } from 'kysely';
 import type { Direction, WinderConfig } from '../../winding/types.ts';
-import { isUuid } from './ids.ts';
+import { canonicalId, isUuid } from './ids.ts';
 import type { Database, WinderTable } from './schema.ts';
 
 /** A winder of a workshop and how it is set. */
@@ -103,7 +103,7 @@ export async function updateWinder(
 ): Promise<'ok' | 'name-taken' | 'not-found'> {
 	if (!isUuid(winderId)) return 'not-found';
 	const taken = await findWinderByName(trx, workshopId, settings.name);
-	if (taken && taken.id !== winderId) return 'name-taken';
+	if (taken && taken.id !== canonicalId(winderId)) return 'name-taken';
 	const result = await trx
 		.updateTable('winder')
 		.set(columns(settings))

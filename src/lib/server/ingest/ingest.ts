@@ -22,6 +22,7 @@ import {
 } from '../../winding/winder.ts';
 import { headOfQueue, takeNextCoil, type TakenCoil } from '../db/coils.ts';
 import { inWorkshop } from '../db/connect.ts';
+import { canonicalId } from '../db/ids.ts';
 import {
 	findTap,
 	planOfOpenRun,
@@ -136,7 +137,7 @@ export class IngestCore implements Ingest {
 			onFailed: (workshopId, winderId, error) => this.#failed(workshopId, winderId, error)
 		});
 		this.#live.onWatched((workshopId, winderId) => {
-			const seat = this.#seats.get(`${workshopId}/${winderId}`);
+			const seat = this.#seats.get(keyOf(workshopId, winderId));
 			if (!seat) return;
 			this.#show(seat);
 			void this.#give(seat.shop);
@@ -352,7 +353,7 @@ export class IngestCore implements Ingest {
 	}
 
 	linkLog(workshopId: string, winderId: string): LinkLog {
-		const seat = this.#seats.get(`${workshopId}/${winderId}`);
+		const seat = this.#seats.get(keyOf(workshopId, winderId));
 		return seat ? seat.record.log(seat.links.size) : { lines: [], refused: {}, carriers: {}, links: 0 };
 	}
 
@@ -405,8 +406,8 @@ export class IngestCore implements Ingest {
 	}
 
 	async configChanged(workshopId: string, winderId: string): Promise<void> {
-		this.#onConfigChanged(winderId);
-		const key = `${workshopId}/${winderId}`;
+		this.#onConfigChanged(canonicalId(winderId));
+		const key = keyOf(workshopId, winderId);
 		await this.#loading.get(key);
 		const seat = this.#seats.get(key);
 		if (!seat) return;
@@ -656,7 +657,7 @@ export class IngestCore implements Ingest {
 	// ---- seats
 
 	#seat(workshopId: string, winderId: string): Promise<Seat | null> | Seat {
-		const key = `${workshopId}/${winderId}`;
+		const key = keyOf(workshopId, winderId);
 		const seat = this.#seats.get(key);
 		if (seat) return seat;
 		let loading = this.#loading.get(key);
@@ -676,6 +677,10 @@ export class IngestCore implements Ingest {
 		});
 		if (!found) return null;
 		const { winder, saved, head } = found;
+		// A second seat of one winder would give out the numbers of the first one's facts again.
+		const key = keyOf(workshopId, winder.id);
+		const seated = this.#seats.get(key);
+		if (seated) return seated;
 		let state = (saved.state as WinderState | null) ?? newWinder();
 		for (const cursor of saved.cursors) {
 			const { b: boot, n, e, f: forward, v: reverse, t } = cursor;
@@ -688,7 +693,7 @@ export class IngestCore implements Ingest {
 			this.#shops.set(workshopId, shop);
 		}
 		const seat = new Seat(winder, state, saved.factNo, shop, this.#steady());
-		this.#seats.set(`${workshopId}/${winder.id}`, seat);
+		this.#seats.set(key, seat);
 		// The server may have ended after a coil was taken and before this bench had it.
 		const held = runIdsOf(state);
 		for (const run of saved.openRuns) if (!held.includes(run.runId)) this.#putOnBench(seat, run);
@@ -776,7 +781,7 @@ export class IngestCore implements Ingest {
 	}
 
 	#saved(workshopId: string, winderId: string): void {
-		const seat = this.#seats.get(`${workshopId}/${winderId}`);
+		const seat = this.#seats.get(keyOf(workshopId, winderId));
 		if (!seat) return;
 		if (seat.shown.unsaved > 0 || !seat.shown.saving) this.#show(seat);
 		if (wantsCoil(seat.state)) {
@@ -788,7 +793,7 @@ export class IngestCore implements Ingest {
 
 	#failed(workshopId: string, winderId: string, error: unknown): void {
 		this.#onError(`The lines of winder ${winderId} could not be saved; they are kept and tried again.`, error);
-		const seat = this.#seats.get(`${workshopId}/${winderId}`);
+		const seat = this.#seats.get(keyOf(workshopId, winderId));
 		if (seat) this.#show(seat);
 	}
 
@@ -823,6 +828,9 @@ export class IngestCore implements Ingest {
 		return saved;
 	}
 }
+
+/** The name of a seat, however the id was spelt that led to it. */
+const keyOf = (workshopId: string, winderId: string) => `${workshopId}/${canonicalId(winderId)}`;
 
 /** Cursors of the boots lines were heard of. Totals held for the maker's word are not in them. */
 function cursorsOf(state: WinderState, heard: Set<string>): Cursor[] {

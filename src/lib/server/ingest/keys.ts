@@ -1,4 +1,5 @@
 import { randomBytes } from 'node:crypto';
+import { canonicalId } from '../db/ids.ts';
 import type { Db } from '../db/schema.ts';
 import { findLinkKey, hashLinkKey } from '../db/winders.ts';
 import type { WinderRef } from './types.ts';
@@ -45,7 +46,7 @@ export class LinkKeys {
 
 	/** Keys of this winder are looked up anew. */
 	forget(winderId: string): void {
-		for (const [hash, known] of this.#known) if (known.ref.winderId === winderId) this.#known.delete(hash);
+		for (const [hash, known] of this.#known) if (known.ref.winderId === canonicalId(winderId)) this.#known.delete(hash);
 	}
 
 	/** A ticket for one link within half a minute. */

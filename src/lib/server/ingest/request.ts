@@ -1,3 +1,4 @@
+import { canonicalId } from '../db/ids.ts';
 import { notFound, problem } from '../problem.ts';
 import { linesAtOnceMax } from './ingest.ts';
 import { bearerOf, type LinkKeys } from './keys.ts';
@@ -23,7 +24,7 @@ export async function senderOf(
 		return { ok: false, refusal: away() };
 	}
 	if (!ref) return { ok: false, refusal: noKey() };
-	if (ref.winderId !== winderId.toLowerCase()) return { ok: false, refusal: notFound() };
+	if (ref.winderId !== canonicalId(winderId)) return { ok: false, refusal: notFound() };
 	return { ok: true, ref };
 }
 

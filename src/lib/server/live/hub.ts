@@ -1,5 +1,6 @@
 import { randomUUID } from 'node:crypto';
 import type { LiveView } from '../../winding/types.ts';
+import { canonicalId } from '../db/ids.ts';
 
 /** A view as its maker gives it; the hub stamps the rest. */
 export type UnstampedView = Omit<LiveView, 'seq' | 'server'>;
@@ -105,7 +106,7 @@ export function createLiveHub(): LiveHub {
 	const latest = new Map<string, LiveView>();
 	const watching = new Map<string, Set<OneSlot>>();
 	const hearers: ((workshopId: string, winderId: string) => void)[] = [];
-	const keyOf = (workshopId: string, winderId: string) => `${workshopId}/${winderId}`;
+	const keyOf = (workshopId: string, winderId: string) => `${workshopId}/${canonicalId(winderId)}`;
 
 	const open = (workshopId: string, winderId: string, signal?: AbortSignal): Watcher => {
 		const key = keyOf(workshopId, winderId);
@@ -125,7 +126,7 @@ export function createLiveHub(): LiveHub {
 		signal?.addEventListener('abort', onAbort, { once: true });
 		const view = latest.get(key);
 		if (view) watcher.put(view);
-		if (set.size === 1) for (const hear of hearers) hear(workshopId, winderId);
+		if (set.size === 1) for (const hear of hearers) hear(workshopId, canonicalId(winderId));
 		return watcher;
 	};
 
