@@ -50,6 +50,7 @@ describe('a whole number as people type it', () => {
 describe('text', () => {
 	it('of one line loses line ends and control characters, and keeps emoji and right-to-left writing', () => {
 		expect(typedLine(' neck\r\ncoil\u0000 🧲 شريط ')).toBe('neck coil  🧲 شريط');
+		expect(typedLine('neck\ud83e coil \udf4b')).toBe('neck  coil');
 	});
 
 	it('of several lines keeps its lines', () => {

@@ -25,11 +25,11 @@ export function typedWhole(text: string, unit: readonly string[] = []): number |
 	return Number(rest);
 }
 
-/** One line of text as it is stored: composed, without control characters or line ends, without outer spaces. */
+/** One line of text as it is stored: composed, without control characters, halves of characters or line ends, without outer spaces. */
 export function typedLine(text: string): string {
 	return text
 		.normalize('NFC')
-		.replace(/\p{Cc}+/gu, ' ')
+		.replace(/[\p{Cc}\p{Cs}]+/gu, ' ')
 		.trim();
 }
 
@@ -38,7 +38,7 @@ export function typedText(text: string): string {
 	return text
 		.normalize('NFC')
 		.replace(/\r\n?/g, '\n')
-		.replace(/(?![\n\t])\p{Cc}/gu, '')
+		.replace(/(?![\n\t])[\p{Cc}\p{Cs}]/gu, '')
 		.trim();
 }
 

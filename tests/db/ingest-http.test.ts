@@ -106,6 +106,30 @@ describe('lines over HTTP', () => {
 		});
 	});
 
+	it('are acknowledged and kept whole while the winder is read in capitals', async () => {
+		await queueCoil(db, shop.id, 'neck', 500);
+		const capitals = shop.winderId.toUpperCase();
+		await post(counter.hi());
+		for (let batch = 0; batch < 25; batch++) {
+			const [sent, shown] = await Promise.all([
+				post(counter.wind(2).join('\n')),
+				call(getLive, { key: shop.linkKey, winder: capitals })
+			]);
+			expect(await sent.json()).toMatchObject({ duplicate: 0, ack: { n: counter.n, e: counter.e } });
+			expect(await shown.json()).toMatchObject({ winderId: shop.winderId });
+		}
+		const shown = await call(getLive, { as: { role: 'maker' }, winder: capitals });
+		expect(await shown.json()).toMatchObject({ forward: 50, run: { turns: 50 } });
+		const facts = await db.owner
+			.selectFrom('fact')
+			.select(['no', 'kind'])
+			.where('winder_id', '=', shop.winderId)
+			.orderBy('no')
+			.execute();
+		expect(facts.map((fact) => fact.no)).toEqual(facts.map((_, i) => i + 1));
+		expect(facts.filter((fact) => fact.kind === 'stopped')).toHaveLength(25);
+	});
+
 	it('may be none: a poll', async () => {
 		const response = await post('# nothing new\n');
 		expect(response.status).toBe(200);
@@ -254,6 +278,24 @@ describe('taps over HTTP', () => {
 		await isProblem(await tap('no object'), 422);
 	});
 
+	it('are cleaned of what no record can hold', async () => {
+		const body = { id: randomUUID(), kind: 'set-aside', reason: ' broken\u0000wire \ud800', ageMs: 0 };
+		expect((await tap(body)).status).toBe(200);
+		// The tap is placed once a line of a later moment has come.
+		await post(counter.tick(0, 1500, 0));
+		// The same tap in capitals is the same tap.
+		expect((await tap({ ...body, id: body.id.toUpperCase() })).status).toBe(200);
+		const run = await db.owner
+			.selectFrom('run')
+			.select('set_aside_reason')
+			.where('workshop_id', '=', shop.id)
+			.where('state', '=', 'set-aside')
+			.execute();
+		expect(run).toEqual([{ set_aside_reason: 'broken wire' }]);
+		const nothing = { ...body, id: randomUUID(), reason: '\u0000\udfff' };
+		expect(await isProblem(await tap(nothing), 422)).toMatchObject({ field: 'reason' });
+	});
+
 	it('need a session', async () => {
 		expect((await tap({ id: randomUUID(), kind: 'keep', ageMs: 0 }, null)).status).toBe(401);
 	});
@@ -312,6 +354,8 @@ describe('runs over HTTP', () => {
 		expect(some.runs.map((run) => run.name)).toEqual(['coil 2', 'coil 1']);
 		expect((await page('?q=S3')).runs.map((run) => run.name)).toEqual(['coil 3']);
 		expect((await page('?q=%25')).runs).toEqual([]);
+		expect((await page('?q=S%003')).runs).toEqual([]);
+		expect((await page('?q=S3%00')).runs.map((run) => run.name)).toEqual(['coil 3']);
 	});
 
 	it('are refused a question that makes no sense, with the field', async () => {

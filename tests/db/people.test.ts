@@ -67,6 +67,10 @@ beforeEach(async () => {
 });
 
 describe('a session', () => {
+	it('with an address no record can hold finds nobody', async () => {
+		expect(await findSignIn(db.app, 'ada\u0000@hollow-lane.example')).toBeNull();
+	});
+
 	it('finds its member with the workshop’s name and zone', async () => {
 		const ada = await join(workshop, 'owner', 'Ada Quill');
 		expect(await findMember(db.app, await claimsOf(ada))).toEqual({

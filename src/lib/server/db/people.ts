@@ -47,6 +47,8 @@ export function normaliseEmail(typed: string): string {
 
 /** Looks an address up before the workshop is known. Null: nobody works here under it. */
 export async function findSignIn(db: Db, email: string): Promise<SignIn | null> {
+	// PostgreSQL raises an error on a NUL, and nobody has one in an address.
+	if (email.includes('\0')) return null;
 	const { rows } = await sql<{
 		workshop_id: string;
 		member_id: string;

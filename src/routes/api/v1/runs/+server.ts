@@ -4,6 +4,7 @@ import { guard } from '$lib/server/auth/guard';
 import { inWorkshop } from '$lib/server/db/connect';
 import { listRuns } from '$lib/server/db/runs';
 import { problem } from '$lib/server/problem';
+import { typedLine } from '$lib/typed-values';
 import type { RequestHandler } from './$types';
 
 const limitMax = 200;
@@ -13,7 +14,7 @@ const instant = z.union([z.iso.datetime({ offset: true }), z.iso.date()], {
 	error: 'must be a date such as 2026-03-01 (its start in UTC) or an instant such as 2026-03-01T08:30:00Z'
 });
 const asked = z.object({
-	q: z.string().max(100, 'must have at most 100 characters').optional(),
+	q: z.string().max(100, 'must have at most 100 characters').transform(typedLine).optional(),
 	from: instant.optional(),
 	to: instant.optional(),
 	state: z.enum(['open', 'kept', 'set-aside'], { error: 'must be open, kept or set-aside' }).optional(),
