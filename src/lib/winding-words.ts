@@ -258,6 +258,12 @@ export function directionText(direction: Direction): string {
 	return direction === 'clockwise' ? 'clockwise ↻' : 'counter-clockwise ↺';
 }
 
+/** Both directions as a form offers them. */
+export const directionOptions = (['counter-clockwise', 'clockwise'] as const).map((value) => ({
+	value,
+	label: directionText(value)
+}));
+
 /** The whole sentence, so that nobody has to guess from which end. */
 export function directionSentence(direction: Direction, topFaces: TopFaces): string {
 	return `Seen from the top of the bobbin, the wire goes on ${directionText(direction)}. Top faces ${topFaces}.`;

@@ -1,7 +1,8 @@
 import { z } from 'zod';
 import { wholeText } from '../../../lib/format.ts';
 import { coilLimits } from '../../../lib/server/db/coils.ts';
-import { lengthOf, typedLine, typedText, typedWhole } from '../../../lib/typed-values.ts';
+import { keptAsTyped, nameField, parseTyped, wholeField, type FormParsed } from '../../../lib/server/typed-form.ts';
+import { lengthOf, typedText, typedWhole } from '../../../lib/typed-values.ts';
 
 /** The short form of what to wind: text fields in, a coil or sentences out. Nothing typed is lost on the way. */
 
@@ -29,44 +30,16 @@ export const emptyCoil: CoilTyped = {
 
 const turnWords = ['turns', 'turn'];
 
-/** What to say of a refused value, with the value as it stands in the field. */
-function kept(typed: string): string {
-	const shown = typed.trim();
-	if (shown === '') return 'nothing was typed.';
-	return `“${[...shown].slice(0, 40).join('')}${lengthOf(shown) > 40 ? '…' : ''}” was kept as typed.`;
-}
-
-/** A whole number between two bounds, typed generously. */
-function whole(label: string, unit: string, min: number, max: number) {
-	return z.string().transform((typed, context) => {
-		const value = typedWhole(typed, turnWords);
-		if (value !== null && value >= min && value <= max) return value;
-		context.addIssue({
-			code: 'custom',
-			message: `${label}: ${wholeText(min)} to ${wholeText(max)}${unit}; ${kept(typed)}`
-		});
-		return z.NEVER;
-	});
-}
-
 const coilSchema = z
 	.object({
-		name: z.string().transform((typed, context) => {
-			const name = typedLine(typed);
-			if (lengthOf(name) >= 1 && lengthOf(name) <= nameMax) return name;
-			context.addIssue({
-				code: 'custom',
-				message: `Name: 1 to ${nameMax} characters; ${name === '' ? 'nothing was typed.' : `${lengthOf(name)} were kept as typed.`}`
-			});
-			return z.NEVER;
-		}),
-		target: whole('Target', ' turns', targetLimits.min, targetLimits.max),
+		name: nameField(nameMax),
+		target: wholeField('Target', ' turns', turnWords, targetLimits),
 		lookEvery: z.string().transform((typed, context) => {
 			const value = typedWhole(typed, turnWords);
 			if (value !== null && (value === 0 || (value >= lookEveryMin && value <= targetLimits.max))) return value;
 			context.addIssue({
 				code: 'custom',
-				message: `Look interval: 0 for none, or ${lookEveryMin} turns up to the target; ${kept(typed)}`
+				message: `Look interval: 0 for none, or ${lookEveryMin} turns up to the target; ${keptAsTyped(typed)}`
 			});
 			return z.NEVER;
 		}),
@@ -83,7 +56,7 @@ const coilSchema = z
 			});
 			return z.NEVER;
 		}),
-		alike: whole('How many alike', '', 1, alikeMax)
+		alike: wholeField('How many alike', '', ['coils', 'coil'], { min: 1, max: alikeMax })
 	})
 	.superRefine((coil, context) => {
 		if (coil.lookEvery > coil.target) {
@@ -96,21 +69,19 @@ const coilSchema = z
 	})
 	.transform(({ alike, ...coil }) => ({ coil: { ...coil, toleranceTurns }, alike }));
 
-export type CoilParsed =
-	| { ok: true; value: z.output<typeof coilSchema> }
-	| { ok: false; typed: CoilTyped; errors: Partial<Record<CoilField, string>> };
+export type CoilParsed = FormParsed<CoilField, z.output<typeof coilSchema>>;
 
-/** Reads the form. `alike` may be absent (editing one coil). */
+/** A field that the form does not hold is blank, but one coil is meant without `alike` (editing it). */
+const absent: CoilTyped = {
+	name: '',
+	target: '',
+	lookEvery: '',
+	direction: '',
+	topFaces: '',
+	note: '',
+	alike: emptyCoil.alike
+};
+
 export function parseCoilForm(form: FormData): CoilParsed {
-	const typed = { ...emptyCoil };
-	for (const field of Object.keys(typed) as CoilField[]) {
-		const value = form.get(field);
-		if (typeof value === 'string') typed[field] = value;
-		else if (field !== 'alike') typed[field] = '';
-	}
-	const parsed = coilSchema.safeParse(typed);
-	if (parsed.success) return { ok: true, value: parsed.data };
-	const errors: Partial<Record<CoilField, string>> = {};
-	for (const issue of parsed.error.issues) errors[issue.path[0] as CoilField] ??= issue.message;
-	return { ok: false, typed, errors };
+	return parseTyped(form, absent, coilSchema);
 }

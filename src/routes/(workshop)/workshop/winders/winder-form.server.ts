@@ -1,6 +1,7 @@
 import { z } from 'zod';
 import { wholeText } from '../../../../lib/format.ts';
-import { lengthOf, typedLine, typedWhole } from '../../../../lib/typed-values.ts';
+import { keptAsTyped, nameField, parseTyped, wholeField, type FormParsed } from '../../../../lib/server/typed-form.ts';
+import { typedWhole } from '../../../../lib/typed-values.ts';
 import { winderLimits } from '../../../../lib/server/db/winders.ts';
 
 /** The settings of a winder: text fields in, settings or sentences out. Nothing typed is lost on the way. */
@@ -27,55 +28,29 @@ export const newWinderTyped: WinderTyped = {
 	keepAfterS: ''
 };
 
-function kept(typed: string): string {
-	const shown = typed.trim();
-	if (shown === '') return 'nothing was typed.';
-	return `“${[...shown].slice(0, 40).join('')}${lengthOf(shown) > 40 ? '…' : ''}” was kept as typed.`;
-}
-
-function whole(label: string, unit: string, words: string[], { min, max }: { min: number; max: number }) {
-	return z.string().transform((typed, context) => {
-		const value = typedWhole(typed, words);
-		if (value !== null && value >= min && value <= max) return value;
-		context.addIssue({
-			code: 'custom',
-			message: `${label}: ${wholeText(min)} to ${wholeText(max)}${unit}; ${kept(typed)}`
-		});
-		return z.NEVER;
-	});
-}
-
 const turnWords = ['turns', 'turn'];
 const { nameMax, keepAfterS: keepLimits } = winderLimits;
 
 const winderSchema = z
 	.object({
-		name: z.string().transform((typed, context) => {
-			const name = typedLine(typed);
-			if (lengthOf(name) >= 1 && lengthOf(name) <= nameMax) return name;
-			context.addIssue({
-				code: 'custom',
-				message: `Name: 1 to ${nameMax} characters; ${name === '' ? 'nothing was typed.' : `${lengthOf(name)} were kept as typed.`}`
-			});
-			return z.NEVER;
-		}),
-		pulsesPerTurn: whole('Pulses per turn', '', ['pulses', 'pulse'], winderLimits.pulsesPerTurn),
-		rpmMax: whole('Highest speed', ' rpm', ['rpm'], winderLimits.rpmMax),
+		name: nameField(nameMax),
+		pulsesPerTurn: wholeField('Pulses per turn', '', ['pulses', 'pulse'], winderLimits.pulsesPerTurn),
+		rpmMax: wholeField('Highest speed', ' rpm', ['rpm'], winderLimits.rpmMax),
 		seesDirection: z
 			.enum(['yes', 'no'], { error: 'Sees direction: yes or no; choose one.' })
 			.transform((answer) => answer === 'yes'),
 		forwardIs: z.enum(['counter-clockwise', 'clockwise'], {
 			error: 'Turning forward: counter-clockwise ↺ or clockwise ↻; choose one.'
 		}),
-		easeEarlyTurns: whole('Ease off early by', ' turns', turnWords, winderLimits.easeEarlyTurns),
-		stopEarlyTurns: whole('Stop early by', ' turns', turnWords, winderLimits.stopEarlyTurns),
+		easeEarlyTurns: wholeField('Ease off early by', ' turns', turnWords, winderLimits.easeEarlyTurns),
+		stopEarlyTurns: wholeField('Stop early by', ' turns', turnWords, winderLimits.stopEarlyTurns),
 		keepAfterS: z.string().transform((typed, context) => {
 			if (typed.trim() === '' || typed.trim().toLowerCase() === 'never') return null;
 			const value = typedWhole(typed, ['seconds', 'second', 's']);
 			if (value !== null && value >= keepLimits.min && value <= keepLimits.max) return value;
 			context.addIssue({
 				code: 'custom',
-				message: `Keep by itself after: ${keepLimits.min} to ${keepLimits.max} seconds, or empty for never; ${kept(typed)}`
+				message: `Keep by itself after: ${keepLimits.min} to ${keepLimits.max} seconds, or empty for never; ${keptAsTyped(typed)}`
 			});
 			return z.NEVER;
 		})
@@ -92,20 +67,13 @@ const winderSchema = z
 
 export type WinderForm = z.output<typeof winderSchema>;
 
-export type WinderParsed =
-	{ ok: true; value: WinderForm } | { ok: false; typed: WinderTyped; errors: Partial<Record<WinderField, string>> };
+export type WinderParsed = FormParsed<WinderField, WinderForm>;
+
+/** A field that the form does not hold is blank, whatever a new winder would begin with. */
+const absent = Object.fromEntries(Object.keys(newWinderTyped).map((field) => [field, ''])) as WinderTyped;
 
 export function parseWinderForm(form: FormData): WinderParsed {
-	const typed = { ...newWinderTyped };
-	for (const field of Object.keys(typed) as WinderField[]) {
-		const value = form.get(field);
-		typed[field] = typeof value === 'string' ? value : '';
-	}
-	const parsed = winderSchema.safeParse(typed);
-	if (parsed.success) return { ok: true, value: parsed.data };
-	const errors: Partial<Record<WinderField, string>> = {};
-	for (const issue of parsed.error.issues) errors[issue.path[0] as WinderField] ??= issue.message;
-	return { ok: false, typed, errors };
+	return parseTyped(form, absent, winderSchema);
 }
 
 /** Settings as the form shows them. */
