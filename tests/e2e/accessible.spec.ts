@@ -147,7 +147,7 @@ test('the bench is accessible in each of its states', async ({ shop, screenOf })
 		await queue.close();
 		await expect(bench.tap('Start this coil')).toBeVisible();
 		await accessible(page, 'waiting');
-		await bench.tap('Screen').click();
+		await bench.tap('Screen, sound').click();
 		await expect(page.getByRole('dialog')).toBeVisible();
 		await page.getByRole('button', { name: 'Measure this screen with a card' }).click();
 		await accessible(page, 'the sheet of screen and sound');

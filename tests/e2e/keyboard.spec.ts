@@ -97,7 +97,7 @@ test('from signing in to a kept coil in the book with keys alone', async ({ shop
 		await expect(bench.word).toHaveText('On the mark');
 		await keys.press('Space');
 		await expect(bench.word).toHaveText('Kept');
-		await tabTo(page, bench.tap('Queue'));
+		await tabTo(page, bench.tap('To the queue'));
 		await keys.press('Enter');
 
 		await tabTo(page, page.getByRole('link', { name: 'Look up' }));

@@ -27,6 +27,8 @@ const sleptMs = 3_000;
 const refusalShownMs = 8_000;
 const caughtUpShownMs = 8_000;
 const missedShownMs = 20_000;
+/** The test has been heard out by then, and the tap that played it has done what its button says. */
+const soundAskedAfterMs = 1_000;
 
 export interface BenchStart {
 	view: LiveView;
@@ -47,6 +49,8 @@ export class Bench {
 	view = $state.raw<LiveView>() as LiveView;
 	settings = $state.raw<DeviceSettings>(usualSettings);
 	sheetOpen = $state(false);
+	/** Another tab is in front, or another program. */
+	hidden = $state(false);
 
 	#nowMs = $state(0);
 	#receivedAtMs = $state(0);
@@ -66,7 +70,8 @@ export class Bench {
 	#awake = $state(true);
 	#soundChoice = $state<SoundChoice>('unasked');
 	#soundAwake = $state(false);
-	#soundAsked = $state(false);
+	/** Monotonic ms at which the test was played and its question not yet answered. */
+	#soundTestedAtMs = $state<number | null>(null);
 	#width = $state(1180);
 	#height = $state(820);
 
@@ -147,6 +152,7 @@ export class Bench {
 			}
 		);
 		this.#measure();
+		this.hidden = document.visibilityState === 'hidden';
 		this.#ticksAtMs = { monotonic: performance.now(), wall: Date.now() };
 		this.#nowMs = performance.now();
 		this.#feed.start();
@@ -239,7 +245,7 @@ export class Bench {
 					? 'screen-only'
 					: !this.#soundAwake
 						? 'asleep'
-						: this.#soundAsked
+						: this.#soundTestedAtMs !== null && nowMs - this.#soundTestedAtMs >= soundAskedAfterMs
 							? 'ask'
 							: 'on'
 		};
@@ -277,7 +283,7 @@ export class Bench {
 			this.#entered = null;
 		}
 		// The test was played and the spindle turns: nobody answers now, and nobody is asked again.
-		if (view.turning) this.#soundAsked = false;
+		if (view.turning) this.#soundTestedAtMs = null;
 		if (live && !wasLost && this.settings.countTick) {
 			const mark = countMarkPassed(before, view);
 			if (mark) this.#player?.playCountTick(mark === 'low');
@@ -310,7 +316,8 @@ export class Bench {
 	}
 
 	#visibility(): void {
-		if (document.visibilityState === 'hidden') this.#hiddenRun = this.view.run;
+		this.hidden = document.visibilityState === 'hidden';
+		if (this.hidden) this.#hiddenRun = this.view.run;
 		else this.#back();
 	}
 
@@ -339,7 +346,6 @@ export class Bench {
 				this.#entered = null;
 				break;
 			case 'heard':
-				this.#soundAsked = false;
 				this.#choose(act.yes ? 'on' : 'screen-only');
 				return;
 			case 'screen':
@@ -371,7 +377,7 @@ export class Bench {
 				// A cue is never mistaken for a test: while the spindle turns none is played.
 				if (!first || !this.#soundAwake || this.view.turning) return;
 				player.playTest();
-				if (this.#soundChoice === 'unasked') this.#soundAsked = true;
+				if (this.#soundChoice === 'unasked') this.#soundTestedAtMs = performance.now();
 			},
 			() => (this.#soundAwake = false)
 		);
@@ -379,7 +385,7 @@ export class Bench {
 
 	#choose(choice: SoundChoice): void {
 		this.#soundChoice = choice;
-		this.#soundAsked = false;
+		this.#soundTestedAtMs = null;
 		try {
 			sessionStorage.setItem('turnstead.sound', choice);
 		} catch {

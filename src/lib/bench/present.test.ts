@@ -19,6 +19,14 @@ const labels = (model: BenchModel) => model.taps.map(({ label }) => label);
 const asked = (detail: QuestionDetail, view: Partial<LiveView> = still) =>
 	run({ state: 'paused', question: detail.kind, questionDetail: detail }, view);
 
+const details: Record<(typeof questions)[number], QuestionDetail> = {
+	jump: { kind: 'jump', keep: 1, take: 2 },
+	restarted: { kind: 'restarted', at: 5, uncertainTurns: 1 },
+	'did-you-stop': { kind: 'did-you-stop', at: 5, rpm: 100 },
+	'which-winder': { kind: 'which-winder', otherWinderId: 'w2', otherName: 'w-02', turns: 3 },
+	snapped: { kind: 'snapped', guess: 4, counted: 5 }
+};
+
 describe('winding', () => {
 	it('shows the count, what is left, the speed and the next look, and nothing to tap but "wire snapped"', () => {
 		const model = show(aView());
@@ -140,7 +148,7 @@ describe('standing still', () => {
 			beside: '5,320 left',
 			clock: ''
 		});
-		expect(labels(model)).toEqual(['Start this coil', 'Queue', 'Screen']);
+		expect(labels(model)).toEqual(['Start this coil', 'To the queue', 'Screen, sound']);
 		expect(model.pedal?.label).toBe('Start this coil');
 	});
 
@@ -168,7 +176,7 @@ describe('standing still', () => {
 			ahead: 'wind on to go on',
 			speed: 'stopped'
 		});
-		expect(labels(model)).toEqual(['Looks even', 'high at one side', 'guided again', 'Screen']);
+		expect(labels(model)).toEqual(['Looks even', 'high at one side', 'guided again', 'Screen, sound']);
 		expect(model.taps.map(({ size }) => size)).toEqual(['main', 'small', 'small', 'small']);
 		expect(model.pedal?.act).toEqual({ do: 'tap', tap: { kind: 'look', note: 'even' } });
 		expect(model.pedalHeld).toBeNull();
@@ -192,7 +200,7 @@ describe('standing still', () => {
 	it('paused offers only small taps and no pedal', () => {
 		const model = show(run({ state: 'paused' }, still));
 		expect(model).toMatchObject({ word: 'Paused', ahead: 'wind on to go on', speed: 'stopped' });
-		expect(labels(model)).toEqual(['Keep as it is', 'wire snapped', 'taking off', 'Set aside', 'Screen']);
+		expect(labels(model)).toEqual(['Keep as it is', 'wire snapped', 'taking off', 'Set aside', 'Screen, sound']);
 		expect(model.taps.every(({ size }) => size === 'small')).toBe(true);
 		expect(model.pedal).toBeNull();
 	});
@@ -283,7 +291,9 @@ describe('kept', () => {
 			endedAt: Date.UTC(2026, 0, 5, 9, 42)
 		};
 		const waiting = run({ state: 'waiting', onBobbin: 0, startedAt: null }, { ...still, last });
-		expect(show(waiting).messages).toEqual(['copy on the last coil: K7Q2 · 5,320 turns ↻ · start 09:30 · finish 09:42']);
+		expect(show(waiting).messages).toEqual([
+			'copy on the last coil: K7Q2 · 5,320 turns ↻ · start 09:30 · finish 09:42'
+		]);
 		expect(show(aView({ last })).messages).toEqual([]);
 	});
 
@@ -339,10 +349,67 @@ describe('questions', () => {
 	});
 
 	it('a question offers no answer while the spindle turns', () => {
-		const model = show(asked({ kind: 'snapped', guess: 2_950, counted: 2_990 }, {}));
-		expect(model.taps).toEqual([]);
-		expect(model.entry).toBeNull();
-		expect(model.ahead).toBe('stop the winder to answer');
+		for (const detail of Object.values(details)) {
+			const model = show(asked(detail, {}));
+			expect(model.taps).toEqual([]);
+			expect(model.entry).toBeNull();
+			expect(model.pedal).toBeNull();
+			expect(model.pedalHeld).toBeNull();
+		}
+	});
+
+	describe.each([
+		[details.restarted, 'winder restarted – stop to answer'],
+		[details['which-winder'], 'which winder? – stop to answer']
+	])('while %o waits at a turning spindle', (detail, remark) => {
+		const turning = (part: Partial<RunView>) => show(run({ question: detail.kind, questionDetail: detail, ...part }));
+
+		it.each([
+			[{ state: 'winding', cue: null }, { ground: 'plain', word: 'Winding', beside: '1,908 left' }, 'quiet'],
+			[{ state: 'winding', cue: 'look-coming' }, { ground: 'plain', word: 'Winding' }, 'look-coming'],
+			[{ state: 'winding', cue: 'look' }, { ground: 'look', shape: 'eye', word: 'Look' }, 'look'],
+			[{ state: 'easing', cue: 'ease' }, { ground: 'ease', word: 'Ease off' }, 'ease'],
+			[{ state: 'easing', cue: 'stop' }, { ground: 'stop', word: 'Stop', alert: 'Stop' }, 'stop'],
+			[{ state: 'easing', cue: 'over', onBobbin: 5_330 }, { ground: 'stop', word: 'Stop', beside: '10 over' }, 'over']
+		] as const)('%o is shown and sounds, with the question as a remark', (part, face, sound) => {
+			const model = turning(part);
+			expect(model).toMatchObject(face);
+			expect(model.sound.cue).toBe(sound);
+			expect(model.messages[0]).toBe(remark);
+			expect(turning({ ...part, questionDetail: null, question: null }).messages).toEqual([]);
+		});
+
+		it('it is asked once the spindle stands', () => {
+			const model = show(asked(detail));
+			expect(model).toMatchObject({ ground: 'look', shape: 'fork' });
+			expect(model.taps.length).toBeGreaterThan(1);
+			expect(model.messages).not.toContain(remark);
+		});
+	});
+
+	it('a count that jumped is held: turning on says so large, and only its stop and over still sound', () => {
+		const jumped = (part: Partial<RunView>) =>
+			show(run({ question: 'jump', questionDetail: { kind: 'jump', keep: 3_412, take: 8_412 }, ...part }));
+		for (const cue of [null, 'look-coming', 'look', 'ease'] as const) {
+			const model = jumped({ cue });
+			expect(model).toMatchObject({ ground: 'look', shape: 'fork', word: 'Count held', count: '3,412' });
+			expect(model.ahead).toBe('stop the winder to answer');
+			expect(model.messages).toEqual(['count jumped, held at 3,412 – stop to answer']);
+			expect(model.sound.cue).toBe('quiet');
+		}
+		for (const cue of ['stop', 'over'] as const) {
+			const model = jumped({ cue, state: 'easing', onBobbin: cue === 'over' ? 5_330 : 5_317 });
+			expect(model).toMatchObject({ ground: 'stop', word: 'Stop', beside: 'count held' });
+			expect(model.sound.cue).toBe(cue);
+		}
+	});
+
+	it.each(['look', 'ease', 'stop', 'over'] as const)('with the wire off or a stop in doubt no %s is called', (cue) => {
+		for (const kind of ['snapped', 'did-you-stop'] as const) {
+			const model = show(run({ question: kind, questionDetail: details[kind], cue }));
+			expect(model).toMatchObject({ ground: 'look', shape: 'fork', ahead: 'stop the winder to answer', alert: '' });
+			expect(model.sound.cue).toBe('quiet');
+		}
 	});
 
 	it('a question stays answerable while the winder is not heard', () => {
@@ -386,7 +453,7 @@ describe('an old number is never shown as live', () => {
 	});
 
 	it('with the signal lost the maker may have stopped: keep and snapped are within reach', () => {
-		expect(labels(show(aView({ ageMs: 9_000 })))).toEqual(['Keep as it is', 'wire snapped', 'Screen']);
+		expect(labels(show(aView({ ageMs: 9_000 })))).toEqual(['Keep as it is', 'wire snapped', 'Screen, sound']);
 		const onCount = run({ state: 'on-count', onBobbin: 5_320 }, { ...still, ageMs: 9_000 });
 		expect(labels(show(onCount))[0]).toBe('Keep this coil');
 	});
@@ -418,6 +485,25 @@ describe('an old number is never shown as live', () => {
 		const model = show(run({ state: 'waiting', startedAt: null, onBobbin: 0 }, { ...still, ageMs: null, boot: null }));
 		expect(model).toMatchObject({ word: 'Waiting', old: false });
 		expect(model.messages).toEqual(['this winder has not sent a line yet']);
+	});
+
+	it('a winder that signed off says so at once, without a cable to look for or a sound', () => {
+		const model = show(aView({ ageMs: 100, notices: ['signed-off'] }), {}, 4_200);
+		expect(model).toMatchObject({ word: 'Signed off', beside: '0:04 ago', old: true, status: 'Signed off' });
+		expect(model.messages).toEqual(['winder signed off']);
+		expect(model.link).toBe('signed off');
+		expect(model.sound.cue).toBe('quiet');
+		expect(show(aView({ ageMs: 100, notices: ['signed-off'] })).word).toBe('Signed off');
+		const waiting = run({ state: 'waiting', startedAt: null, onBobbin: 0 }, { ...still, notices: ['signed-off'] });
+		expect(show(waiting)).toMatchObject({ word: 'Waiting', messages: ['winder signed off'] });
+	});
+
+	it('the state of the link stands in a word beside the winder', () => {
+		expect(show(aView())).toMatchObject({ winder: 'w-01', link: 'live' });
+		expect(show(aView({ ageMs: 2_000 })).link).toBe('old');
+		expect(show(aView({ ageMs: 4_000 })).link).toBe('no signal');
+		expect(show(aView({ ageMs: null, boot: null })).link).toBe('not heard yet');
+		expect(show(aView(), { access: 'signed-out' }).link).toBe('');
 	});
 
 	it('a kept coil’s count is not old however long ago it was', () => {
@@ -454,7 +540,7 @@ describe('saving', () => {
 		const model = show(run({ state: 'on-count', onBobbin: 5_320, pendingTap: 'keep' }, still));
 		expect(model.messages).toEqual(['waiting for the winder’s lines']);
 		expect(model.taps.find(({ label }) => label === 'Keep this coil')?.enabled).toBe(false);
-		expect(labels(model)).toEqual(['Keep this coil', 'Undo', 'Screen']);
+		expect(labels(model)).toEqual(['Keep this coil', 'Undo', 'Screen, sound']);
 		expect(model.pedal).toBeNull();
 	});
 
@@ -463,14 +549,24 @@ describe('saving', () => {
 	});
 
 	it.each([
-		['signed-out', 'signed out: the winder goes on counting'],
-		['not-allowed', 'you may not use this bench any more'],
-		['gone', 'this winder is no longer here']
-	] as const)('%s is told, and nothing can be tapped', (access, message) => {
+		['signed-out', 'Signed out', 'signed out: the winder goes on counting'],
+		['not-allowed', 'Not allowed', 'you may not use this bench any more'],
+		['gone', 'Winder gone', 'this winder is no longer here']
+	] as const)('%s is told, and nothing can be tapped', (access, word, message) => {
 		const model = show(run({ state: 'paused' }, still), { access });
+		expect(model).toMatchObject({ ground: 'plain', shape: 'door', word, old: true });
 		expect(model.messages[0]).toBe(message);
 		expect(model.taps.every(({ act }) => act.do === 'go')).toBe(true);
 		expect(model.pedal).toBeNull();
+	});
+
+	it('who was signed out is not told that the winder has no signal, and the count is shown with its age', () => {
+		const model = show(aView({ ageMs: 0 }), { access: 'signed-out' }, 4_200);
+		expect(model).toMatchObject({ ground: 'plain', word: 'Signed out', beside: '0:04 ago', old: true, speed: '' });
+		expect(model.messages).toEqual(['signed out: the winder goes on counting']);
+		expect(labels(model)).toEqual(['Sign in again']);
+		const stop = show(run({ state: 'easing', cue: 'stop' }), { access: 'signed-out' });
+		expect(stop).toMatchObject({ ground: 'plain', word: 'Signed out', alert: '' });
 	});
 });
 
@@ -479,12 +575,11 @@ describe('sound', () => {
 		expect(show(run({ state: 'winding', cue })).sound.cue).toBe(cue);
 	});
 
-	it('nothing sounds at a standing spindle, for an old number, in a replay, at a question or for a kept coil', () => {
+	it('nothing sounds at a standing spindle, for an old number, in a replay or for a kept coil', () => {
 		const cue = { cue: 'stop', state: 'easing' } as const;
 		expect(show(run({ ...cue, state: 'on-count' }, still)).sound.cue).toBe('quiet');
 		expect(show(run(cue, { ageMs: 1_600 })).sound.cue).toBe('quiet');
 		expect(show(run(cue, { notices: ['catching-up'] })).sound.cue).toBe('quiet');
-		expect(show(asked({ kind: 'jump', keep: 1, take: 2 }, {})).sound.cue).toBe('quiet');
 		expect(show(run({ cue: 'stop', state: 'kept' })).sound.cue).toBe('quiet');
 	});
 
@@ -508,8 +603,30 @@ describe('sound', () => {
 	it('a sleeping sound is said before a run starts, and the test is asked about', () => {
 		const waiting = run({ state: 'waiting', startedAt: null, onBobbin: 0 }, still);
 		expect(show(waiting, { sound: 'asleep' }).messages).toEqual(['sound is off – tap']);
-		expect(labels(show(waiting, { sound: 'ask' }))).toEqual(['Yes, I heard it', 'No, screen only', 'Screen']);
+		const model = show(waiting, { sound: 'ask' });
+		expect(labels(model)).toEqual(['Start this coil', 'Yes, I heard it', 'No, screen only']);
+		expect(model.messages[0]).toBe('Did you hear it?');
+		expect(model.text).toMatch(/no emergency stop/);
 		expect(labels(show(aView(), { sound: 'ask' }))).toEqual(['wire snapped']);
+	});
+
+	it.each([
+		['waiting', 'Start this coil'],
+		['at-look', 'Looks even'],
+		['on-count', 'Keep this coil'],
+		['paused', 'Keep as it is'],
+		['taking-off', 'Done taking off']
+	] as const)('%s keeps "%s" and its pedal while the test is asked about', (state, label) => {
+		const view = run({ state, startedAt: state === 'waiting' ? null : 1 }, still);
+		const [plain, asking] = [show(view), show(view, { sound: 'ask' })];
+		expect(labels(asking)[0]).toBe(label);
+		expect(asking.taps[0]).toEqual(plain.taps[0]);
+		expect(asking.pedal).toEqual(plain.pedal);
+		const coil = plain.taps.filter(({ act }) => act.do === 'tap');
+		expect(asking.taps).toEqual([...coil, ...asking.taps.slice(-2)]);
+		expect(asking.taps.slice(-2).map(({ act }) => act.do)).toEqual(['heard', 'heard']);
+		expect(asking.taps.length).toBeLessThanOrEqual(5);
+		expect(asking.word).toBe(plain.word);
 	});
 
 	it('cues missed behind a dark screen are listed in their order', () => {
@@ -527,13 +644,6 @@ describe('sound', () => {
 });
 
 describe('every state, question and link', () => {
-	const details: Record<(typeof questions)[number], QuestionDetail> = {
-		jump: { kind: 'jump', keep: 1, take: 2 },
-		restarted: { kind: 'restarted', at: 5, uncertainTurns: 1 },
-		'did-you-stop': { kind: 'did-you-stop', at: 5, rpm: 100 },
-		'which-winder': { kind: 'which-winder', otherWinderId: 'w2', otherName: 'w-02', turns: 3 },
-		snapped: { kind: 'snapped', guess: 4, counted: 5 }
-	};
 	const every = runStates.flatMap((state) =>
 		[null, ...questions].flatMap((question) =>
 			[true, false].flatMap((turning) =>

@@ -17,6 +17,7 @@ export type Shape =
 	| 'tag'
 	| 'tag-aside'
 	| 'fork'
+	| 'door'
 	| 'broken-line';
 
 /** What the maker is asked by the screen itself, one step before a tap is made. */
@@ -80,6 +81,8 @@ export interface BenchModel {
 	/** Time spent winding; before the start the note that came with the coil. */
 	clock: string;
 	speed: string;
+	/** State of the link in a word, for beside the winder's name. */
+	link: string;
 	/** Next mark, or what to do to go on. */
 	ahead: string;
 	winder: string;
@@ -184,7 +187,8 @@ const noticeText: Record<Notice, string> = {
 	'two-winders': 'two winders share the name',
 	'line-errors': 'lines arrive damaged',
 	'wrong-way': 'turning the wrong way',
-	'catching-up': 'catching up'
+	'catching-up': 'catching up',
+	'signed-off': 'winder signed off'
 };
 
 /** "0:04 ago", "12:34 ago", "3 h ago": an age that fits beside a word. */
@@ -221,8 +225,14 @@ const go = (label: string, size: BenchTap['size'], href: string): BenchTap => ({
 	enabled: true
 });
 
-const screenTap: BenchTap = { key: 'screen', label: 'Screen', size: 'small', act: { do: 'screen' }, enabled: true };
-const queueTap = go('Queue', 'small', '/wind');
+const screenTap: BenchTap = {
+	key: 'screen',
+	label: 'Screen, sound',
+	size: 'small',
+	act: { do: 'screen' },
+	enabled: true
+};
+const queueTap = go('To the queue', 'small', '/wind');
 const snappedTap = tap('wire snapped', 'small', { kind: 'snapped' });
 const takingOffTap = tap('taking off', 'small', { kind: 'taking-off' });
 const keepAsIsTap = tap('Keep as it is', 'small', { kind: 'keep' });
@@ -279,6 +289,8 @@ export function present(
 	const turning = view.turning && !lost;
 	const counting = run !== null && run.startedAt !== null && run.state !== 'kept' && run.state !== 'set-aside';
 
+	const lostWord = view.notices.includes('signed-off') ? 'Signed off' : 'No signal';
+
 	let shown = faceOf(view, run, turning, view.turning && lost, nowMs, sinceMs, options);
 	if (counting && lost) {
 		const question = run.question !== null;
@@ -286,9 +298,9 @@ export function present(
 			...shown,
 			ground: 'no-signal',
 			shape: 'broken-line',
-			word: question ? shown.word : 'No signal',
+			word: question ? shown.word : lostWord,
 			beside: ageMs === null ? '' : ageText(ageMs),
-			status: question ? shown.status : 'No signal',
+			status: question ? shown.status : lostWord,
 			alert: ''
 		};
 	} else if (counting && old) {
@@ -299,24 +311,27 @@ export function present(
 		};
 	}
 
-	shown = withAccess(withWaitingTaps(shown, run, options), view, options, turning);
+	shown = withAccess(withWaitingTaps(shown, run, options), view, options, turning, counting ? ageMs : null);
+	let asksSound = false;
 	if (!turning && options.access === 'ok') {
-		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first.
-		// Nor does it cover Undo, which does not wait.
+		// Asked once, after the first tap has played the test sound; an answer the maker owes the coil goes first, and so
+		// does Undo, which does not wait.
 		const free = run?.question == null && run?.state !== 'kept' && options.asking === null;
-		if (options.sound === 'ask' && free) shown = { ...shown, ...soundQuestion };
+		asksSound = options.sound === 'ask' && free;
 		// Beside answers there is nothing else to touch.
 		const asking = run?.question != null || options.asking !== null;
-		if (!asking) shown = { ...shown, taps: [...shown.taps, screenTap] };
+		if (asksSound) shown = withSoundQuestion(shown);
+		else if (!asking) shown = { ...shown, taps: [...shown.taps, screenTap] };
 	}
 
 	const messages = messagesOf(view, run, ageMs, link, turning, options);
+	if (asksSound) messages.unshift(soundQuestion);
 	const windingMs = run ? run.windingMs + (view.turning && link === 'live' ? sinceMs * view.timeScale : 0) : 0;
 	const count = run ? run.onBobbin : null;
 	return {
 		...shown,
 		count: count === null ? null : wholeText(count),
-		old: old && run !== null && run.state !== 'kept' && run.state !== 'set-aside' && run.startedAt !== null,
+		old: counting && (old || options.access !== 'ok'),
 		name: run?.coil.name ?? '',
 		goal: run ? turnsText(run.target) : '',
 		clock: !run
@@ -329,6 +344,7 @@ export function present(
 				? `Seen from the top: ${directionText(run.coil.direction)}. Top faces ${run.coil.topFaces}.`
 				: null,
 		speed: speedText(view, lost),
+		link: options.access !== 'ok' ? '' : view.notices.includes('signed-off') ? 'signed off' : linkWords[link],
 		winder: view.winderName,
 		messages,
 		copper: run && run.target > 0 ? Math.max(0, run.onBobbin / run.target) : 0,
@@ -340,7 +356,16 @@ export function present(
 	};
 }
 
+const linkWords: Record<LinkState, string> = {
+	live: 'live',
+	old: 'old',
+	'no-signal': 'no signal',
+	never: 'not heard yet'
+};
+
 function linkNow(view: LiveView, ageMs: number | null, unsure: boolean): LinkState {
+	// It said itself that no more will come, however young its last line is.
+	if (view.notices.includes('signed-off')) return 'no-signal';
 	const link = linkStateOf(ageMs, view.turning);
 	return unsure && link === 'live' ? 'old' : link;
 }
@@ -386,7 +411,9 @@ function faceOf(
 			status: 'Set aside'
 		});
 	}
-	if (run.question !== null && run.questionDetail !== null) return questionFace(run, turning, options);
+	if (run.question !== null && run.questionDetail !== null) {
+		return turning ? turningQuestionFace(run, run.questionDetail, options) : questionFace(run, options);
+	}
 	if (options.asking === 'set-aside' && !turning) return setAsideFace(run);
 	if (turning) return turningFace(run);
 	if (mayTurn) {
@@ -576,8 +603,47 @@ function setAsideFace(run: RunView): Face {
 	});
 }
 
-/** What the winder's sensor cannot know is asked, never guessed; a turning spindle is stopped first. */
-function questionFace(run: RunView, turning: boolean, options: PresentOptions): Face {
+/** An open question for the near line, while the spindle turns and nobody can answer it. */
+function questionRemark(run: RunView): string | null {
+	switch (run.questionDetail?.kind) {
+		case 'jump':
+			return `count jumped, held at ${wholeText(run.onBobbin)} – stop to answer`;
+		case 'restarted':
+			return 'winder restarted – stop to answer';
+		case 'which-winder':
+			return 'which winder? – stop to answer';
+		default:
+			return null;
+	}
+}
+
+/**
+ * A question waits until the spindle stands: meanwhile the coil still has its marks, and the maker is told of them. Not so
+ * with the wire off, or where the count itself is in doubt.
+ */
+function turningQuestionFace(run: RunView, detail: QuestionDetail, options: PresentOptions): Face {
+	if (detail.kind === 'snapped' || detail.kind === 'did-you-stop') {
+		const asked = questionFace(run, options);
+		return { ...asked, taps: [], entry: null, ahead: 'stop the winder to answer', status: asked.word };
+	}
+	// One question at a time: a snapped wire is told once this one is answered.
+	const shown = { ...turningFace(run), taps: [], pedalHeld: null };
+	if (detail.kind === 'jump') {
+		// The count stands still: its stop and over hold, but nothing it shows is on its way to a mark.
+		if (run.cue === 'stop' || run.cue === 'over') return { ...shown, beside: 'count held' };
+		return face({
+			ground: 'look',
+			shape: 'fork',
+			word: 'Count held',
+			ahead: 'stop the winder to answer',
+			status: 'Count held'
+		});
+	}
+	return { ...shown, status: shown.status || (questionRemark(run) ?? '') };
+}
+
+/** What the winder's sensor cannot know is asked, never guessed. */
+function questionFace(run: RunView, options: PresentOptions): Face {
 	const detail = run.questionDetail!;
 	const asked = { ground: 'look' as const, shape: 'fork' as const };
 	let shown: Face;
@@ -667,7 +733,6 @@ function questionFace(run: RunView, turning: boolean, options: PresentOptions): 
 			});
 			break;
 	}
-	if (turning) return { ...shown, taps: [], entry: null, ahead: 'stop the winder to answer', status: shown.word };
 	return { ...shown, status: shown.text ?? shown.word };
 }
 
@@ -693,29 +758,52 @@ function withWaitingTaps(shown: Face, run: RunView | null, options: PresentOptio
 	};
 }
 
-function withAccess(shown: Face, view: LiveView, options: PresentOptions, turning: boolean): Face {
+/** Who may not look any more is told so: the winder is not what fails. */
+const accessWords = {
+	'signed-out': { word: 'Signed out', sentence: 'signed out: the winder goes on counting' },
+	'not-allowed': { word: 'Not allowed', sentence: 'you may not use this bench any more' },
+	gone: { word: 'Winder gone', sentence: 'this winder is no longer here' }
+};
+
+/** @param countAgeMs age of the count of a coil being wound, null: there is none to grow old */
+function withAccess(
+	shown: Face,
+	view: LiveView,
+	options: PresentOptions,
+	turning: boolean,
+	countAgeMs: number | null
+): Face {
 	if (options.access === 'ok') return shown;
+	const { word, sentence } = accessWords[options.access];
 	const out = options.access === 'signed-out' && !turning;
 	return {
 		...shown,
+		ground: 'plain',
+		shape: 'door',
+		word,
+		beside: countAgeMs === null || options.access !== 'signed-out' ? '' : ageText(countAgeMs),
+		text: view.run === null ? sentence : view.run.state === 'kept' ? shown.text : null,
 		taps: out ? [go('Sign in again', 'main', `/sign-in?to=${encodeURIComponent(`/bench/${view.winderId}`)}`)] : [],
 		entry: null,
 		pedal: null,
 		pedalHeld: null,
-		ahead: ''
+		ahead: '',
+		status: word,
+		alert: ''
 	};
 }
 
-const soundQuestion = {
-	text: 'Did you hear it?',
-	taps: [
-		{ key: 'heard', label: 'Yes, I heard it', size: 'main', act: { do: 'heard', yes: true }, enabled: true },
-		{ key: 'unheard', label: 'No, screen only', size: 'main', act: { do: 'heard', yes: false }, enabled: true }
-	] satisfies BenchTap[],
-	entry: null,
-	pedal: null,
-	pedalHeld: null
-};
+const soundQuestion = 'Did you hear it?';
+const soundAnswers: BenchTap[] = [
+	{ key: 'heard', label: 'Yes, I heard it', size: 'small', act: { do: 'heard', yes: true }, enabled: true },
+	{ key: 'unheard', label: 'No, screen only', size: 'small', act: { do: 'heard', yes: false }, enabled: true }
+];
+
+/** Asked beside what the state offers, never in its place: only what leads elsewhere makes room meanwhile. */
+function withSoundQuestion(shown: Face): Face {
+	const own = shown.taps.filter(({ act, size }) => act.do === 'tap' || (size === 'main' && act.do !== 'screen'));
+	return { ...shown, taps: [...own, ...soundAnswers], status: shown.status || soundQuestion };
+}
 
 function aheadMark(run: RunView): string {
 	if (run.nextLook !== null) return `look at ${wholeText(run.nextLook)}`;
@@ -735,10 +823,10 @@ function messagesOf(
 	options: PresentOptions
 ): string[] {
 	const messages: string[] = [];
-	if (options.access === 'signed-out') messages.push('signed out: the winder goes on counting');
-	if (options.access === 'not-allowed') messages.push('you may not use this bench any more');
-	if (options.access === 'gone') messages.push('this winder is no longer here');
+	if (options.access !== 'ok') messages.push(accessWords[options.access].sentence);
 	if (options.refusal !== null) messages.push(options.refusal);
+	const remark = turning && run ? questionRemark(run) : null;
+	if (remark !== null) messages.push(remark);
 	if (!view.saving) messages.push('counting, not saving');
 	// A commit under way is no news; facts held back by a database that is away are.
 	const unsaved = Math.max(
@@ -755,7 +843,7 @@ function messagesOf(
 	if (options.access === 'ok') {
 		if (!options.streaming) messages.push('no connection to the server');
 		else if (lateMs > 0) messages.push(`network is delaying data (${tenths(lateMs)})`);
-		else if (ageMs !== null && (link === 'old' || link === 'no-signal')) {
+		else if (ageMs !== null && !view.notices.includes('signed-off') && (link === 'old' || link === 'no-signal')) {
 			messages.push(
 				`last line ${ageMs < 60_000 ? `${Math.floor(ageMs / 1000)} s` : ageText(ageMs).slice(0, -4)} ago: cable?`
 			);
@@ -805,10 +893,16 @@ function marksOf(run: RunView): number[] {
 function soundOf(view: LiveView, run: RunView | null, link: LinkState): SoundNow {
 	const quiet: SoundNow = { cue: 'quiet', key: 'quiet', nearness: 0, over: 0 };
 	if (run === null || run.startedAt === null || run.state === 'kept' || run.state === 'set-aside') return quiet;
-	// A winder that stood still when its lines ended has nothing to warn of.
-	if (link === 'no-signal') return view.turning ? { ...quiet, cue: 'no-signal', key: `${run.runId} no-signal` } : quiet;
-	if (link !== 'live' || view.notices.includes('catching-up') || !view.turning || run.question !== null) return quiet;
+	// A winder that stood still when its lines ended has nothing to warn of, nor has one that said it goes.
+	if (link === 'no-signal') {
+		const warns = view.turning && !view.notices.includes('signed-off');
+		return warns ? { ...quiet, cue: 'no-signal', key: `${run.runId} no-signal` } : quiet;
+	}
+	if (link !== 'live' || view.notices.includes('catching-up') || !view.turning) return quiet;
 	if (run.state === 'taking-off' || run.cue === null) return quiet;
+	if (run.question === 'snapped' || run.question === 'did-you-stop') return quiet;
+	// A count that is held comes to no mark; one it stands on is still called.
+	if (run.question === 'jump' && run.cue !== 'stop' && run.cue !== 'over') return quiet;
 	const span = Math.max(1, run.stopAt - run.easeAt);
 	return {
 		cue: run.cue,

@@ -37,10 +37,13 @@ const phoneNearM = 0.4;
 /** A screen whose shorter side is below this is a phone. */
 const phoneSidePx = 500;
 
-/** Widest of the far tier's lines in em of the bold face: shape, "No signal 59:59 ago" or "Stopped 10,240 left", a gap. */
-const farWideEm = 10.9;
+/** Widest of the far tier's lines in em of the bold face: shape, "Signed out 59:59 ago" or "Stopped 10,240 left", a gap. */
+const farWideEm = 11;
 /** Widest of its words alone, beside the shape: "Which winder?". */
 const farTallEm = 7.95;
+
+/** A letter of the near tier takes about half an em. */
+const nearLetterEm = 0.5;
 
 const nearRowEm = 1.5;
 /** Two lines of the near tier below the count: a question, and a remark. */
@@ -69,6 +72,8 @@ export interface Sizes {
 	pxPerMm: number;
 	standM: number;
 	nearPx: number;
+	/** About so many letters of the near tier fit in one row. */
+	nearRowLetters: number;
 	farPx: number;
 	countPx: number;
 	/** From the top of the bobbin to the count's line, so that it stands still whatever is said below it. */
@@ -145,6 +150,7 @@ export function sizesFor(screen: Screen): Sizes {
 		pxPerMm,
 		standM,
 		nearPx,
+		nearRowLetters: Math.floor((widthPx - 2 * padPx) / (nearPx * nearLetterEm)),
 		farPx,
 		countPx,
 		countTopPx: Math.floor((bobbinPx - countBoxEm * countPx) / 2),
