@@ -29,11 +29,14 @@ import { parseArgs } from 'node:util';
  * @typedef {object} Served
  * @property {string} url where this machine reaches it
  * @property {number} port
- * @property {() => Promise<void>} stop refuses what is new, closes links, writes the last batch, closes streams, then all else
+ * @property {() => Promise<Unsaved | null>} stop refuses what is new, closes links, writes the last batch, closes streams,
+ *   then all else; what could not be written, null for nothing
  *
  * @typedef {object} App what the built program leaves on globalThis
  * @property {(req: http.IncomingMessage, socket: import('node:stream').Duplex, head: Buffer) => void} upgrade
- * @property {() => Promise<void>} stop
+ * @property {() => Promise<Unsaved | null>} stop
+ *
+ * @typedef {{ lines: number }} Unsaved
  */
 
 const BUILD = join(dirname(fileURLToPath(import.meta.url)), '..', 'build');
@@ -92,13 +95,13 @@ export async function serve(settings) {
 	const address = server.address();
 	const port = typeof address === 'object' && address ? address.port : settings.port;
 
-	/** @type {Promise<void> | undefined} */
+	/** @type {Promise<Unsaved | null> | undefined} */
 	let stopped;
 	const stop = async () => {
 		stopping = true;
 		const closed = new Promise((resolve) => server.close(() => resolve(undefined)));
 		try {
-			await app.stop();
+			return await app.stop();
 		} finally {
 			server.closeIdleConnections();
 			const last = setTimeout(() => server.closeAllConnections(), LAST_REQUESTS_MS);
@@ -107,6 +110,18 @@ export async function serve(settings) {
 		}
 	};
 	return { url: urlOf(settings.host, port, secure), port, stop: () => (stopped ??= stop()) };
+}
+
+/**
+ * What was not on disk at the stop, and where it is.
+ * @param {Unsaved} unsaved
+ */
+export function notSavedText({ lines }) {
+	const what = lines === 0 ? 'The last totals or taps' : lines === 1 ? 'One line' : `${lines} lines`;
+	return (
+		`Not everything is on disk: the database took no more. ${what} could not be saved. ` +
+		'None of it was acknowledged: winders and screens keep theirs and send it again.'
+	);
 }
 
 /**
@@ -239,7 +254,10 @@ async function main() {
 			if (asked) process.exit(130);
 			asked = true;
 			served.stop().then(
-				() => process.exit(0),
+				(unsaved) => {
+					if (unsaved) console.error(notSavedText(unsaved));
+					process.exit(unsaved ? 1 : 0);
+				},
 				(error) => {
 					console.error(error);
 					process.exit(1);

@@ -4,7 +4,7 @@ import { createServer } from 'node:net';
 import { networkInterfaces } from 'node:os';
 import { createSecureContext } from 'node:tls';
 import { parseArgs } from 'node:util';
-import { serve, urlOf } from '../entry.js';
+import { notSavedText, serve, urlOf } from '../entry.js';
 import { provideServerEnv, startEnv, type StartEnv } from '../lib/server/env.ts';
 import { ensureBuilt, isBuilt } from './build.ts';
 import { projectCluster, type Cluster } from './cluster.ts';
@@ -22,7 +22,8 @@ import { startSimulator, type Simulator } from './simulator.ts';
 
 interface Served {
 	url: string;
-	stop(): Promise<void>;
+	/** What could not be saved, null for nothing. */
+	stop(): Promise<{ lines: number } | null>;
 }
 
 /** One press of Ctrl-C reaches this process twice, from the terminal and from npm; a second press comes later than this. */
@@ -35,6 +36,8 @@ const HEALTHY_MS_MAX = 60_000;
 /** What was started, undone in reverse order. */
 const undo: (() => Promise<void> | void)[] = [];
 let stopping: Promise<void> | undefined;
+/** What the server said as it stopped. 'unknown': it could not say. */
+let unsaved: { lines: number } | null | 'unknown' = null;
 let stopAskedAt = 0;
 let placeUrl: string | null = null;
 
@@ -65,7 +68,16 @@ function onSignal(): void {
 	stopAskedAt = now;
 	console.log('\nStopping …');
 	void stopAll().then(() => {
-		console.log(`Stopped in ${((performance.now() - now) / 1000).toFixed(1)} s. Everything is on disk.`);
+		const stopped = `Stopped in ${((performance.now() - now) / 1000).toFixed(1)} s.`;
+		if (unsaved === null) console.log(`${stopped} Everything is on disk.`);
+		else {
+			process.exitCode = 1;
+			console.error(
+				unsaved === 'unknown'
+					? `${stopped} The last batch may not be on disk; what was acknowledged is.`
+					: `${stopped} ${notSavedText(unsaved)}`
+			);
+		}
 		process.exit();
 	});
 }
@@ -103,7 +115,10 @@ async function start(dev: boolean): Promise<void> {
 	if (!dev) notes.push((await building) === 'built' ? 'build       made' : 'build       as it was: nothing changed');
 	if (stopping !== undefined) return;
 	const served = dev ? await serveDev(settings) : await serveBuild(settings);
-	undo.push(() => served.stop());
+	undo.push(async () => {
+		unsaved = 'unknown';
+		unsaved = await served.stop();
+	});
 	await untilHealthy(url);
 
 	const simulator = settings.simulator ? playWinder(url) : null;
@@ -178,10 +193,11 @@ async function serveDev(settings: StartEnv): Promise<Served> {
 	return {
 		url: urlOf(settings.host, settings.port, https !== undefined),
 		async stop() {
-			const app = Reflect.get(globalThis, Symbol.for('turnstead')) as { stop(): Promise<void> } | undefined;
-			await app?.stop();
+			const app = Reflect.get(globalThis, Symbol.for('turnstead')) as Pick<Served, 'stop'> | undefined;
+			const left = (await app?.stop()) ?? null;
 			(vite.httpServer as { closeAllConnections?(): void } | null)?.closeAllConnections?.();
 			await vite.close();
+			return left;
 		}
 	};
 }

@@ -588,6 +588,48 @@ describe('a database that takes nothing', () => {
 		expect(await runs()).toHaveLength(1);
 	});
 
+	it('for one fact of a winder saves all else of it after some tries, and the bench goes on', async () => {
+		const poisoned: unknown[] = [];
+		const { ingest: own } = start({
+			saveWaitMsMax: 60_000,
+			// As if it had come past the edge: half a character is refused by the database itself.
+			write: (writes) =>
+				writeBatch(
+					db.app,
+					writes.map((write) => ({
+						...write,
+						facts: write.facts.map((fact) => (fact.kind === 'stopped' ? { ...fact, detail: { word: '\ud800' } } : fact))
+					}))
+				),
+			onError: (what) => poisoned.push(what)
+		});
+		await queueCoil(db, shop.id, 'neck');
+		const counter = new Counter(clock, '5C0E91A7');
+		expect(await send([counter.hi(), ...counter.wind(20)], own)).toMatchObject({ ack: { n: counter.n, e: 2 } });
+		expect(await view(own)).toMatchObject({ saving: true, unsaved: 0, run: { turns: 20 } });
+		expect(poisoned.filter((what) => String(what).startsWith('GIVEN UP'))).toEqual([
+			expect.stringContaining('"kind":"stopped"')
+		]);
+		expect((await facts()).map((fact) => fact.kind)).not.toContain('stopped');
+		expect((await keptLines()).map((row) => row.k).filter(Boolean)).toEqual(['go', 'stop']);
+		expect(await own.stop()).toBeNull();
+		const { ingest: next } = start();
+		expect(await view(next)).toMatchObject({ forward: 20, run: { turns: 20 } });
+	});
+
+	it('at the stop is said with how many lines it left', async () => {
+		const { gate, write } = failing();
+		const { ingest: own } = start({ write, saveWaitMsMax: 10 });
+		gate.away = true;
+		const counter = new Counter(clock, '5C0E91A7');
+		expect(await own.receive(ref(), [counter.event('go'), counter.event('stop')], 'http', clock.now)).toMatchObject({
+			ok: false,
+			why: 'not-saved'
+		});
+		expect(await own.stop()).toEqual({ lines: 2 });
+		expect(await keptLines()).toEqual([]);
+	});
+
 	it('for one winder’s rows does not hold up the others', async () => {
 		const second = await makeWinder(db, shop.id, 'w-02');
 		const refused = start({

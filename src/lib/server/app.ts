@@ -10,6 +10,12 @@ import { createLinkServer } from './ingest/link-server.ts';
 import type { Ingest } from './ingest/types.ts';
 import { createLiveHub, type LiveHub } from './live/hub.ts';
 
+/** What was not on disk when the program stopped. */
+export interface Unsaved {
+	/** Lines that would have been kept; totals and taps may be unsaved without any. */
+	lines: number;
+}
+
 /** The running program: one a process, whichever copy of a module asks for it. */
 export interface Turnstead {
 	db: Db;
@@ -20,8 +26,11 @@ export interface Turnstead {
 	upgrade(request: IncomingMessage, socket: Duplex, head: Buffer): void;
 	/** Whether the database answers, as the right role, with the migrations this code needs. */
 	health(): Promise<{ ok: true } | { ok: false; why: string }>;
-	/** Links are told to come back, the last batch is written, streams end, the pool closes. */
-	stop(): Promise<void>;
+	/**
+	 * Links are told to come back, the last batch is written, streams end, the pool closes. The answer is what could not be
+	 * written, null for nothing: it was never acknowledged, so that whoever sent it has it still.
+	 */
+	stop(): Promise<Unsaved | null>;
 }
 
 // The entry and the built program each load this module: what they share must not live in it.
@@ -53,14 +62,15 @@ export function makeTurnstead(db: Db): Turnstead {
 	beat.unref();
 	ingest.start();
 
-	let stopped: Promise<void> | null = null;
+	let stopped: Promise<Unsaved | null> | null = null;
 	const stop = async () => {
 		await links.close();
-		await ingest.stop();
+		const unsaved = await ingest.stop();
 		clearInterval(beat);
 		live.close();
 		await db.destroy();
 		if (places[place] === app) delete places[place];
+		return unsaved;
 	};
 	const app: Turnstead = {
 		db,

@@ -1,5 +1,5 @@
 import { afterEach, beforeEach, describe, expect, it, vi } from 'vitest';
-import type { LineRow, WinderWrite } from '../db/recorder.ts';
+import type { LineRow, NumberedFact, RunChange, WinderWrite } from '../db/recorder.ts';
 import { GroupCommit } from './group-commit.ts';
 
 const line = (n: number): LineRow => ({
@@ -34,7 +34,8 @@ beforeEach(() => {
 			batches.push(writes.map((write) => ({ winder: write.winderId, lines: write.lines.map((row) => row.n) })));
 		},
 		onSaved: (_, winderId) => told.push(`saved ${winderId}`),
-		onFailed: (_, winderId) => told.push(`failed ${winderId}`)
+		onFailed: (_, winderId) => told.push(`failed ${winderId}`),
+		onDropped: (_, winderId, dropped) => told.push(`dropped ${winderId} ${JSON.stringify(dropped)}`)
 	});
 });
 afterEach(() => {
@@ -113,12 +114,121 @@ describe('a group commit', () => {
 		expect(commit.saving('shop', 'bad')).toBe(false);
 	});
 
+	describe('with a row that is refused for good', () => {
+		const fact = (no: number): NumberedFact => ({
+			no,
+			kind: 'went-on',
+			at: 0,
+			runId: null,
+			turns: null,
+			detail: {},
+			memberId: null,
+			tapId: null
+		});
+		const closed = { kind: 'closed', runId: 'r', coilId: 'c', state: 'kept' } as RunChange;
+		const back: RunChange = { kind: 'put-back', runId: 'q', coilId: 'c' };
+		const snapshot = { state: { v: 1 }, factNo: 3, at: 0 };
+		const no = Object.assign(new Error('no'), { code: '22P05' });
+		let written: WinderWrite[];
+		beforeEach(() => (written = []));
+
+		/** Refuses whatever `bad` finds in a write; the rest is noted. */
+		const refusing = (bad: (write: WinderWrite) => boolean) => {
+			refuse = (writes) => {
+				if (writes.some(bad)) return no;
+				written.push(...structuredClone(writes));
+				return null;
+			};
+		};
+		const all = () => ({
+			lines: written.flatMap((write) => write.lines),
+			cursors: written.flatMap((write) => write.cursors),
+			facts: written.flatMap((write) => write.facts),
+			changes: written.flatMap((write) => write.changes)
+		});
+
+		it('saves all else after some tries, and says what it gave up', async () => {
+			refusing(
+				(write) => write.facts.some((one) => one.no === 2) || write.changes.some((one) => one.kind === 'put-back')
+			);
+			const more = { lines: [line(1)], cursors: [cursor(1)], facts: [fact(1), fact(2), fact(3)] };
+			let done = false;
+			void commit.add('shop', 'a', { ...more, changes: [back, closed], snapshot }).then(() => (done = true));
+			await vi.advanceTimersByTimeAsync(3_000);
+			expect(written).toEqual([]);
+			expect(done).toBe(false);
+			await vi.advanceTimersByTimeAsync(10_000);
+			expect(done).toBe(true);
+			expect(all().lines).toHaveLength(1);
+			expect(all().cursors).toHaveLength(1);
+			expect(all().facts.map((one) => one.no)).toEqual([1, 3]);
+			expect(all().changes).toEqual([closed]);
+			expect(written.at(-1)?.snapshot).toEqual(snapshot);
+			expect(told.filter((text) => text.startsWith('dropped'))).toEqual([
+				`dropped a ${JSON.stringify({ fact: fact(2) })}`,
+				`dropped a ${JSON.stringify({ change: back })}`
+			]);
+			expect(commit.saving('shop', 'a')).toBe(true);
+			expect(commit.unsaved()).toBeNull();
+		});
+
+		it('never gives up lines or the end of a run, and lets later lines go to disk meanwhile', async () => {
+			refusing((write) => write.changes.some((one) => one.kind === 'closed'));
+			void commit.add('shop', 'a', { lines: [line(1)], facts: [fact(1)], changes: [closed, back], snapshot });
+			await vi.advanceTimersByTimeAsync(15_000);
+			expect(all().lines).toHaveLength(1);
+			expect(commit.holdsBack('shop', 'a')).toBe(true);
+			expect(commit.saving('shop', 'a')).toBe(false);
+			let later = false;
+			void commit.add('shop', 'a', { lines: [line(2)] }).then(() => (later = true));
+			await vi.advanceTimersByTimeAsync(6_000);
+			expect(later).toBe(true);
+			expect(all().lines.map((row) => row.n)).toEqual([1, 2]);
+			expect(all().changes).toEqual([]);
+			expect(written.every((write) => write.snapshot === null)).toBe(true);
+			expect(told.some((text) => text.startsWith('dropped'))).toBe(false);
+
+			refusing(() => false);
+			await vi.advanceTimersByTimeAsync(6_000);
+			expect(all().changes).toEqual([closed, back]);
+			expect(written.at(-1)?.snapshot).toEqual(snapshot);
+			expect(commit.holdsBack('shop', 'a')).toBe(false);
+			expect(commit.saving('shop', 'a')).toBe(true);
+		});
+
+		it('keeps lines that are refused themselves', async () => {
+			refusing((write) => write.lines.length > 0);
+			void add('a', 1);
+			await vi.advanceTimersByTimeAsync(60_000);
+			expect(written).toEqual([]);
+			expect(commit.unsaved()).toEqual({ lines: 1 });
+		});
+
+		it('goes on where it was when the database goes away meanwhile', async () => {
+			let away = true;
+			refuse = (writes) => {
+				if (writes.some((write) => write.facts.some((one) => one.no === 1))) return no;
+				if (away && writes.some((write) => write.facts.length > 0)) return new Error('connect ECONNREFUSED');
+				written.push(...structuredClone(writes));
+				return null;
+			};
+			void commit.add('shop', 'a', { lines: [line(1)], facts: [fact(1), fact(2)] });
+			await vi.advanceTimersByTimeAsync(30_000);
+			away = false;
+			await vi.advanceTimersByTimeAsync(6_000);
+			expect(all().lines).toHaveLength(1);
+			expect(all().facts.map((one) => one.no)).toEqual([2]);
+			expect(commit.unsaved()).toBeNull();
+		});
+	});
+
 	it('of what is being written waits for the batch it is in', async () => {
 		let finish = () => {};
 		const slow = new GroupCommit({
 			write: () => new Promise<void>((resolve) => (finish = resolve)),
 			onSaved: () => {},
-			onFailed: () => {}
+			onFailed: () => {},
+			onDropped: () => {}
 		});
 		const given = slow.add('shop', 'a', { lines: [line(1)] }, true);
 		await vi.advanceTimersByTimeAsync(0);
@@ -132,7 +242,12 @@ describe('a group commit', () => {
 	});
 
 	it('that hangs is no saving', async () => {
-		const hung = new GroupCommit({ write: () => new Promise(() => {}), onSaved: () => {}, onFailed: () => {} });
+		const hung = new GroupCommit({
+			write: () => new Promise(() => {}),
+			onSaved: () => {},
+			onFailed: () => {},
+			onDropped: () => {}
+		});
 		void hung.add('shop', 'a', { lines: [line(1)] }, true);
 		await vi.advanceTimersByTimeAsync(1_000);
 		expect(hung.saving('shop', 'a')).toBe(true);
@@ -145,7 +260,8 @@ describe('a group commit', () => {
 		const own = new GroupCommit({
 			write: async (writes) => void seen.push(...writes),
 			onSaved: () => {},
-			onFailed: () => {}
+			onFailed: () => {},
+			onDropped: () => {}
 		});
 		void own.add('shop', 'a', { cursors: [cursor(1)], snapshot: { state: { n: 1 }, factNo: 1, at: 1 } });
 		void own.add('shop', 'a', { cursors: [cursor(2)], snapshot: { state: { n: 2 }, factNo: 2, at: 2 } });

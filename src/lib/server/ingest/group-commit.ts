@@ -7,6 +7,11 @@ const gatherLinesMax = 200;
 /** After a failed commit the next try comes after this, doubled each time up to the second figure. */
 const retryMsMin = 250;
 const retryMsMax = 5_000;
+/**
+ * So often a winder's rows may be refused before they are written one by one without those that are refused: some eight
+ * seconds, in which whatever was only passing has passed.
+ */
+export const refusalsMax = 5;
 /** A write that takes longer than this is, for whoever looks at the bench, none. */
 const slowMsMax = 3_000;
 /**
@@ -34,6 +39,8 @@ export interface Addition {
 class Journal {
 	readonly write: WinderWrite;
 	failures = 0;
+	/** It holds the end of a run that was refused, see holdsBack. */
+	heldBack = false;
 	retryAt = 0;
 	/** When its writing began. */
 	writingAt = Infinity;
@@ -82,7 +89,13 @@ export interface GroupCommitOptions {
 	/** Told after each commit, and when the saving of a winder fails. */
 	onSaved: (workshopId: string, winderId: string) => void;
 	onFailed: (workshopId: string, winderId: string, error: unknown) => void;
+	/** Told what was given up, in full, because the database refuses it for good. */
+	onDropped: (workshopId: string, winderId: string, dropped: Dropped, error: unknown) => void;
 }
+
+/** What can be given up for the rest to be saved. Lines, cursors and the end of a run never are. */
+export type Dropped =
+	{ fact: NumberedFact } | { change: RunChange } | { snapshot: NonNullable<WinderWrite['snapshot']> };
 
 /**
  * One writer for all winders: what comes while a batch is being written waits for the next. What could not be written
@@ -92,6 +105,8 @@ export class GroupCommit {
 	readonly #options: GroupCommitOptions;
 	#gathering = new Map<string, Journal>();
 	#writing = new Map<string, Journal>();
+	/** Refusals in a row of each winder's rows, until all of them are written. */
+	readonly #refusals = new Map<string, number>();
 	#flushing: Promise<void> | null = null;
 	#timer: NodeJS.Timeout | null = null;
 	#timerAt = Infinity;
@@ -141,6 +156,19 @@ export class GroupCommit {
 		const key = `${workshopId}/${winderId}`;
 		const some = (journals: Map<string, Journal>) => (journals.get(key)?.write.changes.length ?? 0) > 0;
 		return some(this.#gathering) || some(this.#writing);
+	}
+
+	/** Whether the end of a run waits that the database refuses: what came after it is on disk, what a maker tapped is not. */
+	holdsBack(workshopId: string, winderId: string): boolean {
+		const key = `${workshopId}/${winderId}`;
+		return this.#gathering.get(key)?.heldBack === true || this.#writing.get(key)?.heldBack === true;
+	}
+
+	/** What is not on disk now, of all winders; null: nothing. */
+	unsaved(): { lines: number } | null {
+		const journals = [...this.#gathering.values(), ...this.#writing.values()];
+		if (journals.length === 0) return null;
+		return { lines: journals.reduce((sum, journal) => sum + journal.write.lines.length, 0) };
 	}
 
 	/** false while the last try to save this winder failed, or the one going on takes very long. */
@@ -205,21 +233,90 @@ export class GroupCommit {
 		if (batch.length === 0) return;
 		const error = await this.#try(batch);
 		if (error === null) return await this.#saved(batch);
-		if (batch.length > 1 && !isAway(error)) {
-			// One winder's rows are refused: the others must not wait for it.
-			for (const journal of batch) {
-				const own = await this.#try([journal]);
-				if (own === null) await this.#saved([journal]);
-				else this.#failed([journal], own);
-			}
-			return;
+		if (isAway(error)) return this.#failed(batch, error);
+		// One winder's rows are refused: the others must not wait for it.
+		for (const journal of batch) {
+			const own = batch.length === 1 ? error : await this.#try([journal]);
+			if (own === null) await this.#saved([journal]);
+			else await this.#refused(journal, own);
 		}
-		this.#failed(batch, error);
+	}
+
+	async #refused(journal: Journal, error: unknown): Promise<void> {
+		if (!isRefusal(error)) return this.#failed([journal], error);
+		const key = `${journal.write.workshopId}/${journal.write.winderId}`;
+		const refusals = (this.#refusals.get(key) ?? 0) + 1;
+		this.#refusals.set(key, refusals);
+		if (refusals < refusalsMax) this.#failed([journal], error);
+		else await this.#writeApart(journal);
+	}
+
+	/**
+	 * Writes a winder's rows piece by piece, because one of them is refused for good and all others must not wait for it:
+	 * lines and cursors first, then each fact and each change by itself, the state last. A fact, a change or a state that
+	 * is refused is given up, loudly. The end of a run is not: it and what follows wait and are tried again for ever.
+	 */
+	async #writeApart(journal: Journal): Promise<void> {
+		const { write } = journal;
+		const { workshopId, winderId } = write;
+		const nothing: WinderWrite = {
+			workshopId,
+			winderId,
+			lines: [],
+			cursors: [],
+			facts: [],
+			changes: [],
+			snapshot: null
+		};
+		const part = (some: Partial<WinderWrite>) => this.#tryWrite([{ ...nothing, ...some }]);
+		const dropped = (what: Dropped, error: unknown) => this.#options.onDropped(workshopId, winderId, what, error);
+
+		const lost = await part({ lines: write.lines, cursors: write.cursors });
+		if (lost !== null) return this.#failed([journal], lost);
+		write.lines = [];
+		write.cursors = [];
+		for (let fact = write.facts[0]; fact; fact = write.facts[0]) {
+			const error = await part({ facts: [fact] });
+			if (error !== null && !isRefusal(error)) return this.#failed([journal], error);
+			if (error !== null) dropped({ fact }, error);
+			write.facts.shift();
+		}
+		for (let change = write.changes[0]; change; change = write.changes[0]) {
+			const error = await part({ changes: [change] });
+			if (error !== null && !isRefusal(error)) return this.#failed([journal], error);
+			if (error !== null && change.kind === 'closed') return this.#holdBack(journal, error);
+			if (error !== null) dropped({ change }, error);
+			write.changes.shift();
+		}
+		const { snapshot } = write;
+		const error = snapshot && (await part({ snapshot }));
+		if (error !== null && !isRefusal(error)) return this.#failed([journal], error);
+		if (snapshot && error !== null) dropped({ snapshot }, error);
+		const refusals = this.#refusals.get(`${workshopId}/${winderId}`);
+		await this.#saved([journal]);
+		// What was refused now may come again with the next of this winder, and then waits no eight seconds.
+		if (refusals !== undefined && error !== null) this.#refusals.set(`${workshopId}/${winderId}`, refusals);
+	}
+
+	/** Lines and facts are on disk and are let go; the end of a run and what follows it goes on in a journal of its own. */
+	#holdBack(journal: Journal, error: unknown): void {
+		const { workshopId, winderId, changes, snapshot } = journal.write;
+		const rest = new Journal(workshopId, winderId);
+		rest.add({ changes, snapshot });
+		rest.heldBack = true;
+		rest.dueAt = journal.dueAt;
+		rest.failures = journal.failures;
+		journal.done();
+		this.#failed([rest], error);
 	}
 
 	async #try(batch: Journal[]): Promise<unknown> {
+		return this.#tryWrite(batch.map((journal) => journal.write));
+	}
+
+	async #tryWrite(writes: WinderWrite[]): Promise<unknown> {
 		try {
-			await this.#options.write(batch.map((journal) => journal.write));
+			await this.#options.write(writes);
 			return null;
 		} catch (error) {
 			return error ?? new Error('The batch was refused.');
@@ -235,6 +332,7 @@ export class GroupCommit {
 			}
 			const { workshopId, winderId } = journal.write;
 			this.#writing.delete(`${workshopId}/${winderId}`);
+			this.#refusals.delete(`${workshopId}/${winderId}`);
 			journal.done();
 			this.#options.onSaved(workshopId, winderId);
 		}
@@ -254,6 +352,12 @@ export class GroupCommit {
 			this.#options.onFailed(workshopId, winderId, error);
 		}
 	}
+}
+
+/** The data is refused as it is (SQLSTATE classes 22 and 23): the same again would be refused again. */
+function isRefusal(error: unknown): boolean {
+	const code = (error as { code?: unknown }).code;
+	return typeof code === 'string' && /^2[23][0-9A-Z]{3}$/.test(code);
 }
 
 /** The database cannot be reached or takes nothing at all, in contrast to refusing these rows. */

@@ -37,7 +37,7 @@ import {
 import type { Db } from '../db/schema.ts';
 import { findWinder } from '../db/winders.ts';
 import type { LiveHub } from '../live/hub.ts';
-import { GroupCommit, unsavedRowsMax, type Addition } from './group-commit.ts';
+import { GroupCommit, unsavedRowsMax, type Addition, type Dropped } from './group-commit.ts';
 import { runOf, Seat, traceOf, type SeatLink, type Shop } from './seat.ts';
 import type { Carrier, Ingest, LinkLog, Received, RejectedLine, TapAnswer, WinderRef } from './types.ts';
 
@@ -134,7 +134,8 @@ export class IngestCore implements Ingest {
 		this.#commit = new GroupCommit({
 			write: options.write ?? ((writes) => writeBatch(this.#db, writes)),
 			onSaved: (workshopId, winderId) => this.#saved(workshopId, winderId),
-			onFailed: (workshopId, winderId, error) => this.#failed(workshopId, winderId, error)
+			onFailed: (workshopId, winderId, error) => this.#failed(workshopId, winderId, error),
+			onDropped: (workshopId, winderId, dropped, error) => this.#dropped(winderId, dropped, error)
 		});
 		this.#live.onWatched((workshopId, winderId) => {
 			const seat = this.#seats.get(keyOf(workshopId, winderId));
@@ -150,8 +151,11 @@ export class IngestCore implements Ingest {
 		this.#timer.unref();
 	}
 
-	/** Writes what is left, once. Nothing is taken in afterwards by anybody who waits for this. */
-	async stop(): Promise<void> {
+	/**
+	 * Writes what is left, once. Nothing is taken in afterwards by anybody who waits for this. The answer is what could not
+	 * be written, null for nothing.
+	 */
+	async stop(): Promise<{ lines: number } | null> {
 		this.#stopped = true;
 		if (this.#timer) clearInterval(this.#timer);
 		this.#timer = null;
@@ -160,6 +164,7 @@ export class IngestCore implements Ingest {
 		}
 		await this.#commit.flush();
 		this.#commit.stop();
+		return this.#commit.unsaved();
 	}
 
 	/** Writes what waits without waiting for its time. */
@@ -304,7 +309,8 @@ export class IngestCore implements Ingest {
 		this.#show(seat);
 		// A tap that was made before may still wait for the disk.
 		const committed = this.#commit.pending(workshopId, seat.id);
-		if (committed && !(await this.#inTime(committed))) {
+		const late = committed !== null && !(await this.#inTime(committed));
+		if (late || this.#commit.holdsBack(workshopId, seat.id)) {
 			return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 		}
 		return { ...step.answer, live: this.#show(seat) };
@@ -795,6 +801,16 @@ export class IngestCore implements Ingest {
 		this.#onError(`The lines of winder ${winderId} could not be saved; they are kept and tried again.`, error);
 		const seat = this.#seats.get(keyOf(workshopId, winderId));
 		if (seat) this.#show(seat);
+	}
+
+	#dropped(winderId: string, dropped: Dropped, error: unknown): void {
+		const what =
+			'snapshot' in dropped ? { factNo: dropped.snapshot.factNo, at: dropped.snapshot.at } : Object.values(dropped)[0];
+		this.#onError(
+			`GIVEN UP for winder ${winderId}: the database refuses this ${Object.keys(dropped)[0]} for good. ` +
+				`Everything else of it is saved. ${JSON.stringify(what)}`,
+			error
+		);
 	}
 
 	#show(seat: Seat): LiveView {
