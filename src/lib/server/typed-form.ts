@@ -59,7 +59,7 @@ export function parseTyped<Field extends string, Schema extends z.ZodType>(
 	blank: Readonly<Record<Field, string>>,
 	schema: Schema
 ): FormParsed<Field, z.output<Schema>> {
-	const typed = { ...blank };
+	const typed: Record<Field, string> = { ...blank };
 	for (const field of Object.keys(blank) as Field[]) {
 		const value = form.get(field);
 		if (typeof value === 'string') typed[field] = value;
