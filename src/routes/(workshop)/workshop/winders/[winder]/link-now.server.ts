@@ -52,7 +52,7 @@ export async function linkNow(workshopId: string, winderId: string): Promise<Lin
 		lines: log.lines
 			.slice(-linesShown)
 			.reverse()
-			.map(({ at, text, verdict }) => ({ at, text, ...told(verdict) })),
+			.map(({ at, text, verdict }) => ({ at, text, ...told(verdict, text) })),
 		refused: Object.entries(log.refused)
 			.filter(([, count]) => count > 0)
 			.map(([why, count]) => ({ text: refusalText(why as Refusal), count }))
@@ -64,8 +64,13 @@ export async function linkNow(workshopId: string, winderId: string): Promise<Lin
 	};
 }
 
-function told(verdict: 'stored' | 'thinned' | 'duplicate' | Refusal): { verdict: string; refused: boolean } {
+function told(
+	verdict: 'stored' | 'thinned' | 'duplicate' | Refusal,
+	text: string
+): { verdict: string; refused: boolean } {
 	if (verdict === 'stored') return { verdict: 'stored', refused: false };
+	// A goodbye holds no count: nothing of it was thinned out.
+	if (verdict === 'thinned' && text.startsWith('BYE')) return { verdict: 'heard', refused: false };
 	if (verdict === 'thinned') return { verdict: 'counted, not stored (thinned)', refused: false };
 	if (verdict === 'duplicate') return { verdict: 'came before', refused: false };
 	return { verdict: `refused: ${refusalText(verdict)}`, refused: true };
