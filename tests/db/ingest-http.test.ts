@@ -3,7 +3,7 @@ import { afterAll, beforeAll, beforeEach, describe, expect, it } from 'vitest';
 import { isHttpError, isRedirect } from '@sveltejs/kit';
 import { makeTurnstead, turnstead, type Turnstead } from '../../src/lib/server/app.ts';
 import { connect } from '../../src/lib/server/db/connect.ts';
-import { bodyBytesMax } from '../../src/lib/server/ingest/request.ts';
+import { httpBytesMax } from '../../src/lib/turnline/index.ts';
 import { GET as getHealth } from '../../src/routes/healthz/+server.ts';
 import { GET as getRuns } from '../../src/routes/api/v1/runs/+server.ts';
 import { GET as getRun } from '../../src/routes/api/v1/runs/[run]/+server.ts';
@@ -169,7 +169,7 @@ describe('lines over HTTP', () => {
 
 	it('of more than 500 or more than 64 KiB are 413', async () => {
 		await isProblem(await post('\n'.repeat(501)), 413);
-		await isProblem(await post('#'.repeat(bodyBytesMax + 1)), 413);
+		await isProblem(await post('#'.repeat(httpBytesMax + 1)), 413);
 		expect((await post('\n'.repeat(500))).status).toBe(200);
 	});
 

@@ -1,10 +1,10 @@
 import { randomUUID } from 'node:crypto';
 import { afterAll, beforeAll, beforeEach, describe, expect, it } from 'vitest';
 import { writeBatch, type WinderWrite } from '../../src/lib/server/db/recorder.ts';
-import { linesAtOnceMax, type IngestCore } from '../../src/lib/server/ingest/ingest.ts';
+import type { IngestCore } from '../../src/lib/server/ingest/ingest.ts';
 import type { Received } from '../../src/lib/server/ingest/types.ts';
 import type { LiveHub } from '../../src/lib/server/live/hub.ts';
-import { parseHostLine, withChecksum } from '../../src/lib/turnline/index.ts';
+import { httpLinesMax, parseHostLine, withChecksum } from '../../src/lib/turnline/index.ts';
 import { Clock, Counter, makeIngest, makeShop, makeWinder, queueCoil, tapOf, type Shop } from './bench.ts';
 import { freshDatabase, type TestDatabase } from './harness.ts';
 
@@ -161,7 +161,7 @@ describe('lines', () => {
 	});
 
 	it('of too many at once are refused', async () => {
-		const lines = Array.from({ length: linesAtOnceMax + 1 }, () => '');
+		const lines = Array.from({ length: httpLinesMax + 1 }, () => '');
 		expect(await ingest.receive(ref(), lines, 'http', clock.now)).toEqual({ ok: false, why: 'too-many-lines' });
 	});
 
@@ -373,6 +373,48 @@ describe('a coil', () => {
 		expect(await coilState(neck.id)).toBe('on-bench');
 		const numbers = (await facts()).map((fact) => fact.no);
 		expect(numbers).toEqual(numbers.map((_, i) => i + 1));
+	});
+
+	it('that was set aside stays with its bench while that can be undone, and then goes to whoever is free', async () => {
+		const neck = await queueCoil(db, shop.id, 'neck');
+		const second = await makeWinder(db, shop.id, 'w-02');
+		const one = new Counter(clock, 'AAAA0001');
+		const two = new Counter(clock, 'AAAA0002');
+		const sendTwo = async () =>
+			ok(
+				await ingest.receive(
+					{ workshopId: shop.id, winderId: second.winderId },
+					[two.tick(0, 100, 0)],
+					'http',
+					clock.now
+				)
+			);
+		await send([one.hi(), ...one.wind(20)]);
+		// A screen at the other bench: it comes before this one, which is only heard.
+		const watcher = live.open(shop.id, second.winderId);
+		await sendTwo();
+		expect(await tap({ kind: 'set-aside', reason: 'wire scraped' })).toMatchObject({ ok: true });
+		await send([one.tick(0, 1000, 0)]);
+		for (let i = 0; i < 3; i++) await sendTwo();
+		expect((await view(ingest, second.winderId)).run).toBeNull();
+		expect(await tap({ kind: 'undo' })).toMatchObject({ ok: true, live: { run: { turns: 20 } } });
+		expect(await runs()).toMatchObject([{ coil_id: neck.id, state: 'open', winder_id: shop.winderId }]);
+
+		// Once more; now this bench is silent until the time is over.
+		expect(await tap({ kind: 'set-aside', reason: 'wire scraped' })).toMatchObject({ ok: true });
+		await send([one.tick(0, 1000, 0)]);
+		await ingest.putBack(shop.id, shop.winderId);
+		clock.pass(4_000);
+		await ingest.queueChanged(shop.id);
+		await sendTwo();
+		expect(await view(ingest, second.winderId)).toMatchObject({ run: null, waiting: 1 });
+		clock.pass(7_000);
+		ingest.tick();
+		await sendTwo();
+		expect(await view(ingest, second.winderId)).toMatchObject({ run: { coil: { coilId: neck.id } } });
+		expect(await tap({ kind: 'undo' })).toMatchObject({ ok: false });
+		expect((await runs()).filter((run) => run.state === 'open')).toHaveLength(1);
+		watcher.end();
 	});
 
 	it('that has not turned can be put back, and is left to others until the queue changes', async () => {

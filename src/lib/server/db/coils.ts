@@ -211,19 +211,21 @@ export async function headOfQueue(
 
 /**
  * The next coil of the queue goes to a bench, with its run. Two benches that ask at once get two coils: the row is
- * locked and a locked one is passed over. null: nothing waits.
+ * locked and a locked one is passed over. `reserved`: coils left to other benches. null: nothing waits.
  */
 export async function takeNextCoil(
 	trx: Trx,
 	workshopId: string,
 	winderId: string,
-	takenAt: Date
+	takenAt: Date,
+	reserved: string[] = []
 ): Promise<TakenCoil | null> {
 	const row = await trx
 		.selectFrom('coil')
 		.selectAll()
 		.where('workshop_id', '=', workshopId)
 		.where('state', '=', 'waiting')
+		.where(sql<boolean>`id <> all(${reserved}::uuid[])`)
 		.orderBy('place')
 		.orderBy('id')
 		.limit(1)

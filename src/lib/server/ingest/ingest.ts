@@ -1,4 +1,12 @@
-import { formatLine, parseDeviceLine, parseJsonLine, refusalText, type DeviceLine } from '../../turnline/index.ts';
+import {
+	formatLine,
+	httpLinesMax,
+	linksPerWinderMax,
+	parseDeviceLine,
+	parseJsonLine,
+	refusalText,
+	type DeviceLine
+} from '../../turnline/index.ts';
 import { linkStateOf } from '../../winding/link.ts';
 import type { Fact, LiveView, Tap } from '../../winding/types.ts';
 import {
@@ -41,10 +49,6 @@ import { GroupCommit, unsavedRowsMax, type Addition, type Dropped } from './grou
 import { runOf, Seat, traceOf, type SeatLink, type Shop } from './seat.ts';
 import type { Carrier, Ingest, LinkLog, Received, RejectedLine, TapAnswer, WinderRef } from './types.ts';
 
-/** Lines in one request: an hour of thinned lines in some dozen requests. */
-export const linesAtOnceMax = 500;
-/** Sockets a winder may hold: cable and Wi-Fi, and some that have not been noticed to be gone. */
-export const linksPerWinderMax = 5;
 /** A sender and a maker wait no longer than this for the disk before they are told that it does not save. */
 const saveWaitMsMax = 4_000;
 const notSavedRetryS = 2;
@@ -189,7 +193,7 @@ export class IngestCore implements Ingest {
 		const seat = await this.#seat(link.workshopId, link.winderId);
 		if (!seat) return { ok: false, why: 'not-found' };
 		if (this.#stopped) return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
-		if (lines.length > linesAtOnceMax) return { ok: false, why: 'too-many-lines' };
+		if (lines.length > httpLinesMax) return { ok: false, why: 'too-many-lines' };
 
 		const parse = carrier === 'ndjson' ? parseJsonLine : parseDeviceLine;
 		const good: { line: DeviceLine; text: string }[] = [];
@@ -465,7 +469,7 @@ export class IngestCore implements Ingest {
 				passed.add(seat);
 				shop.unsure.add(seat);
 				const taken = await inWorkshop(this.#db, shop.id, (trx) =>
-					takeNextCoil(trx, shop.id, seat.id, new Date(this.#now()))
+					takeNextCoil(trx, shop.id, seat.id, new Date(this.#now()), this.#reserved(seat))
 				);
 				shop.unsure.delete(seat);
 				if (taken) this.#putOnBench(seat, taken);
@@ -498,9 +502,19 @@ export class IngestCore implements Ingest {
 		return ranked.sort((a, b) => b[0] - a[0]).map(([, seat]) => seat);
 	}
 
+	/** Coils set aside at other benches that can still be undone there: taken meanwhile, they would lie at two benches. */
+	#reserved(seat: Seat): string[] {
+		const now = this.#now();
+		return [...this.#seats.values()].flatMap((other) => {
+			const { run } = other.state;
+			if (other === seat || other.shop !== seat.shop || run?.status !== 'set-aside') return [];
+			return run.undoUntil !== null && now <= run.undoUntil ? [run.plan.coilId] : [];
+		});
+	}
+
 	#putOnBench(seat: Seat, taken: TakenCoil): void {
-		// The one before may have been undone while the queue was asked.
-		if (!wantsCoil(seat.state)) {
+		// The one before may have been undone, or this one set aside at another bench, while the queue was asked.
+		if (!wantsCoil(seat.state) || this.#reserved(seat).includes(taken.plan.coilId)) {
 			this.#write(seat, { changes: [{ kind: 'put-back', runId: taken.runId, coilId: taken.plan.coilId }] }, true);
 			return;
 		}

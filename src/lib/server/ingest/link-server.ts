@@ -1,18 +1,21 @@
 import type { IncomingMessage } from 'node:http';
 import type { Duplex } from 'node:stream';
 import { WebSocketServer, type WebSocket } from 'ws';
-import { formatLine, holdMsMax } from '../../turnline/index.ts';
+import {
+	formatLine,
+	holdMsMax,
+	linksPerWinderMax,
+	messageBytesMax,
+	messageLinesMax,
+	pingSeconds,
+	subprotocol
+} from '../../turnline/index.ts';
 import type { IngestCore, TakenIn } from './ingest.ts';
 import { bearerOf, type LinkKeys } from './keys.ts';
 import type { SeatLink } from './seat.ts';
 import type { WinderRef } from './types.ts';
 
 export const linkPath = '/api/v1/link';
-const subprotocol = 'turnline.1';
-/** 50 lines of 160 bytes fit twice; what is longer is no winder. */
-const messageBytesMax = 16 * 1024;
-const linesPerMessageMax = 50;
-const pingMs = 20_000;
 /** A winder that reads nothing must not fill the memory with what it is told. */
 const unreadBytesMax = 256 * 1024;
 /** Messages that wait for their turn on one link, and messages sent against HOLD in a row. */
@@ -57,7 +60,7 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 				() => {}
 			);
 		}
-	}, pingMs);
+	}, pingSeconds * 1000);
 	ping.unref();
 
 	async function admit(request: IncomingMessage, socket: Duplex, head: Buffer): Promise<void> {
@@ -127,8 +130,8 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 			if (socket.readyState !== socket.OPEN) return;
 			const lines = text.split('\n');
 			if (lines.at(-1) === '') lines.pop();
-			if (lines.length > linesPerMessageMax) {
-				socket.close(closeCodes.tooBig, `more than ${linesPerMessageMax} lines in a message`);
+			if (lines.length > messageLinesMax) {
+				socket.close(closeCodes.tooBig, `more than ${messageLinesMax} lines in a message`);
 				return;
 			}
 			const step = await ingest.takeIn(ref, lines, 'ws', Date.now());
@@ -182,7 +185,10 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 			const attached = await ingest.attach(ref, link);
 			if (!attached.ok) {
 				const full = attached.why === 'full';
-				socket.close(full ? closeCodes.overload : closeCodes.policy, full ? 'five links already' : 'no such winder');
+				socket.close(
+					full ? closeCodes.overload : closeCodes.policy,
+					full ? `${linksPerWinderMax} links already` : 'no such winder'
+				);
 				return;
 			}
 			detach = attached.detach;

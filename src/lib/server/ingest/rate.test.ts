@@ -1,12 +1,13 @@
 import { describe, expect, it } from 'vitest';
-import { burstLines, LineBucket, linesPerSecond } from './rate.ts';
+import { burstLinesMax, linesPerSecondMax } from '../../turnline/index.ts';
+import { LineBucket } from './rate.ts';
 
 describe('the line bucket', () => {
 	it('gives one burst, then so many a second', () => {
 		const bucket = new LineBucket(0);
-		expect(bucket.take(burstLines, 0)).toBe(0);
-		expect(bucket.take(1, 0)).toBe(1000 / linesPerSecond);
-		expect(bucket.take(linesPerSecond, 1000)).toBe(0);
+		expect(bucket.take(burstLinesMax, 0)).toBe(0);
+		expect(bucket.take(1, 0)).toBe(1000 / linesPerSecondMax);
+		expect(bucket.take(linesPerSecondMax, 1000)).toBe(0);
 		expect(bucket.take(1, 1000)).toBeGreaterThan(0);
 	});
 
@@ -19,7 +20,7 @@ describe('the line bucket', () => {
 
 	it('never holds more than one burst', () => {
 		const bucket = new LineBucket(0);
-		expect(bucket.take(burstLines + 1, 3_600_000)).toBeGreaterThan(0);
+		expect(bucket.take(burstLinesMax + 1, 3_600_000)).toBeGreaterThan(0);
 	});
 
 	it('lets an hour of spool pass in minutes beside live lines', () => {

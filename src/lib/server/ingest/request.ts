@@ -1,11 +1,8 @@
+import { httpBytesMax, httpLinesMax } from '../../turnline/index.ts';
 import { canonicalId } from '../db/ids.ts';
 import { notFound, problem } from '../problem.ts';
-import { linesAtOnceMax } from './ingest.ts';
 import { bearerOf, type LinkKeys } from './keys.ts';
 import type { Carrier, WinderRef } from './types.ts';
-
-/** 500 lines of 130 bytes. */
-export const bodyBytesMax = 64 * 1024;
 
 const carriers: Record<string, Carrier> = { 'text/plain': 'http', 'application/x-ndjson': 'ndjson' };
 
@@ -38,13 +35,13 @@ export async function linesOf(
 		const detail = 'Send the lines as text/plain, one line each, or as application/x-ndjson. Nothing was taken in.';
 		return { ok: false, refusal: problem(415, detail, {}, { accept: Object.keys(carriers).join(', ') }) };
 	}
-	const body = await readUpTo(request, bodyBytesMax);
+	const body = await readUpTo(request, httpBytesMax);
 	if (body === null) return { ok: false, refusal: tooMuch() };
 	// A byte a character in text: a line is measured in bytes, and whatever is not ASCII is refused line by line.
 	const text = body.toString(carrier === 'http' ? 'latin1' : 'utf8');
 	const lines = text.split('\n');
 	if (lines.at(-1) === '') lines.pop();
-	if (lines.length > linesAtOnceMax) return { ok: false, refusal: tooMuch() };
+	if (lines.length > httpLinesMax) return { ok: false, refusal: tooMuch() };
 	return { ok: true, lines, carrier };
 }
 
@@ -69,8 +66,8 @@ async function readUpTo(request: Request, bytesMax: number): Promise<Buffer | nu
 export function tooMuch(): Response {
 	return problem(
 		413,
-		`At most ${linesAtOnceMax} lines and ${bodyBytesMax / 1024} KiB go in one request. Nothing was taken in: send fewer at once.`,
-		{ linesMax: linesAtOnceMax, bytesMax: bodyBytesMax }
+		`At most ${httpLinesMax} lines and ${httpBytesMax / 1024} KiB go in one request. Nothing was taken in: send fewer at once.`,
+		{ linesMax: httpLinesMax, bytesMax: httpBytesMax }
 	);
 }
 

@@ -3,6 +3,7 @@ import { turnstead } from '$lib/server/app';
 import { away, linesOf, senderOf, tooMuch } from '$lib/server/ingest/request';
 import type { Received } from '$lib/server/ingest/types';
 import { notFound, problem } from '$lib/server/problem';
+import { burstLinesMax, linesPerSecondMax } from '$lib/turnline';
 import type { RequestHandler } from './$types';
 
 /** Lines of a winder over HTTP; see firmware-protocol/PROTOCOL.md. */
@@ -41,8 +42,9 @@ function refusal(received: Received & { ok: false }): Response {
 		case 'rate':
 			return problem(
 				429,
-				'More lines than 20 a second for long, or 600 at once. None of these was taken in: keep them and send them again.',
-				{ linesPerSecond: 20, burstLines: 600 },
+				`More lines than ${linesPerSecondMax} a second for long, or ${burstLinesMax} at once. ` +
+					'None of these was taken in: keep them and send them again.',
+				{ linesPerSecond: linesPerSecondMax, burstLines: burstLinesMax },
 				{ 'retry-after': String(received.retryAfterS) }
 			);
 		case 'not-saved':
