@@ -1,6 +1,6 @@
 import { randomInt } from 'node:crypto';
-import { hashPassword } from '../lib/server/auth/passwords.ts';
-import { anyWorkshop, insertMemberWithPassword, insertWorkshop } from '../lib/server/db/admin.ts';
+import { hashPassword, verifyPassword } from '../lib/server/auth/passwords.ts';
+import { anyWorkshop, insertMemberWithPassword, insertWorkshop, passwordHashOf } from '../lib/server/db/admin.ts';
 import { addCoil, type CoilInput } from '../lib/server/db/coils.ts';
 import type { Db, Role } from '../lib/server/db/schema.ts';
 import { addWinder, newLinkKey } from '../lib/server/db/winders.ts';
@@ -38,9 +38,24 @@ export interface DemoWinder {
 	linkKey: string;
 }
 
-/** The sign-ins as they are shown and kept, or null where there is no demo workshop. */
-export function demoSignIns(): string | null {
-	return readData(SIGN_INS);
+/** The sign-ins as they are shown, or null where there is no demo workshop. `db` signs in as the owner. */
+export async function demoSignIns(db: Db): Promise<string[] | null> {
+	const kept = readData(SIGN_INS);
+	return kept === null ? null : signInsNow(db, kept);
+}
+
+/** The rows as they were kept; a password that no longer signs in is left out. */
+export async function signInsNow(db: Db, kept: string): Promise<string[]> {
+	return Promise.all(
+		kept
+			.trimEnd()
+			.split('\n')
+			.map(async (row) => {
+				const [role = '', email = '', password = ''] = row.split(/\s+/);
+				const holds = await verifyPassword(await passwordHashOf(db, email), password);
+				return holds ? row : `${role.padEnd(10)}  ${email}  changed since`;
+			})
+	);
 }
 
 /** The winder the simulator plays, or null where there is no demo workshop. */

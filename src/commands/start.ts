@@ -105,11 +105,13 @@ async function start(dev: boolean): Promise<void> {
 
 	const databaseUrl = settings.databaseUrl ?? (await startDatabase(notes));
 	provideServerEnv({ databaseUrl, authSecret: settings.authSecret ?? authSecret() });
+	let signIns: string[] | null = null;
 	await asOwner(databaseUrl, async (db) => {
 		const migrations = await migrateOrSay(db);
 		if (migrations.length > 0) notes.push(`migrations  ${migrations.join(', ')}`);
 		if ((await ensureDemo(db)) === 'made')
 			notes.push('workshop    demo, "Hollow Lane workshop", with a coil to practise on');
+		signIns = await demoSignIns(db);
 	});
 
 	if (!dev) notes.push((await building) === 'built' ? 'build       made' : 'build       as it was: nothing changed');
@@ -124,7 +126,7 @@ async function start(dev: boolean): Promise<void> {
 	const simulator = settings.simulator ? playWinder(url) : null;
 	notePlace({ url, stopping: false, simulator: simulator && { pid: simulator.pid, ticks: startTicks(simulator.pid) } });
 	if (simulator !== null) notes.push('winder      w-01, simulated (SIMULATOR=off in a shop that has one)');
-	announce(settings, notes, process.uptime());
+	announce(settings, notes, signIns, process.uptime());
 }
 
 async function startDatabase(notes: string[]): Promise<string> {
@@ -301,7 +303,7 @@ function playWinder(url: string): Simulator | null {
 	return simulator;
 }
 
-function announce(settings: StartEnv, notes: string[], tookS: number): void {
+function announce(settings: StartEnv, notes: string[], signIns: string[] | null, tookS: number): void {
 	const secure = settings.tlsCert !== null;
 	const lines = [
 		'',
@@ -312,13 +314,11 @@ function announce(settings: StartEnv, notes: string[], tookS: number): void {
 		'Started:',
 		...notes.map((note) => `  ${note}`)
 	];
-	const signIns = demoSignIns();
 	if (signIns !== null) {
-		const rows = signIns.trimEnd().split('\n');
 		lines.push(
 			'',
 			'Demo sign-ins (kept in .data/demo-sign-ins.txt, readable only by you):',
-			...rows.map((row) => `  ${row}`)
+			...signIns.map((row) => `  ${row}`)
 		);
 	}
 	lines.push('', 'Ctrl-C stops it.', '');

@@ -93,6 +93,17 @@ export async function insertMemberWithPassword(
 	return row.id;
 }
 
+/** The stored hash of whoever works here under an address; null: nobody does, or no password was chosen yet. */
+export async function passwordHashOf(db: Kysely<Database>, email: string): Promise<string | null> {
+	const row = await db
+		.selectFrom('member')
+		.select('password_hash')
+		.where('email', '=', email)
+		.where('removed_at', 'is', null)
+		.executeTakeFirst();
+	return row?.password_hash ?? null;
+}
+
 /** Throws when the database does not answer. */
 export async function ping(db: Kysely<Database>): Promise<void> {
 	await sql`select 1`.execute(db);
