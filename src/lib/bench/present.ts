@@ -1,7 +1,7 @@
 import { durationText, turnsText, wallTime, wholeText } from '../format.ts';
 import { directionText } from '../winding-words.ts';
 import { linkStateOf } from '../winding/link.ts';
-import type { Direction, LinkState, LiveView, Notice, RunView, TapKind } from '../winding/types.ts';
+import type { Direction, LinkState, LiveView, Notice, QuestionDetail, RunView, TapKind } from '../winding/types.ts';
 
 /** Own ground, word, shape and sound for each state: colour never speaks alone. */
 export type Ground = 'plain' | 'ease' | 'look' | 'stop' | 'mark' | 'no-signal';
