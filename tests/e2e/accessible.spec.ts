@@ -192,3 +192,56 @@ test('the bench is accessible in each of its states', async ({ shop, screenOf })
 		await hand.end();
 	}
 });
+
+test('who is signed out at the bench is told so in its own word, accessibly', async ({ shop, screenOf, troubles }) => {
+	troubles.expect(/answer 401: POST \S+\/taps/);
+	const { server, workshop } = shop;
+	const winder = await server.addWinder(handSettings, workshop);
+	await server.addCoil({ name: 'Bridge', target: 300, lookEvery: 0 }, workshop);
+	const page = await screenOf(server, workshop.maker);
+	const hand = new HandWinder(server, winder);
+	try {
+		await hand.link();
+		const bench = await new BenchPage(page).open(server, winder);
+		await expect(bench.tap('Start this coil')).toBeVisible();
+		await hand.wind(300);
+		await expect(bench.keep).toBeVisible();
+		await page.context().clearCookies();
+		await bench.keep.click();
+		await expect(bench.word).toHaveText('Signed out');
+		await expect(bench.tap('Sign in again')).toBeVisible();
+		await expect(page.locator('main[data-ground="plain"][data-old="true"]')).toBeVisible();
+		await expect(bench.count).toHaveText('300');
+		await accessible(page, 'signed out');
+	} finally {
+		await hand.end();
+	}
+});
+
+test('what is read out on coming to the bench is its name, whatever the count does since', async ({
+	shop,
+	screenOf
+}) => {
+	const { server, workshop } = shop;
+	const winder = await server.addWinder(handSettings, workshop);
+	await server.addCoil({ name: 'Bridge', target: 900, lookEvery: 0 }, workshop);
+	const page = await screenOf(server, workshop.maker);
+	const hand = new HandWinder(server, winder);
+	const title = `Bench of ${winder.name} · Turnstead`;
+	try {
+		await hand.link();
+		await hand.turn(300);
+		await page.goto(`${server.url}/wind`);
+		await page.getByRole('link', { name: `Open the bench of ${winder.name}` }).click();
+		const bench = new BenchPage(page);
+		await expect(bench.count).toHaveText('300');
+		await expect(page.locator('#svelte-announcer')).toHaveText(title);
+		await hand.turn(100);
+		await expect(bench.count).toHaveText('400');
+		await expect(bench.says(`${winder.name} live`)).toBeVisible();
+		await expect(page).toHaveTitle(title);
+		await expect(page.locator('#svelte-announcer')).toHaveText(title);
+	} finally {
+		await hand.end();
+	}
+});

@@ -210,6 +210,44 @@ for (const screen of screens) {
 		}
 	});
 
+	test(`on a ${screen.name} the question of the sound fits beside the taps of each state`, async ({
+		shop,
+		screenOf
+	}) => {
+		const { server, workshop } = shop;
+		const winder = await server.addWinder(handSettings, workshop);
+		await server.addCoil({ name: 'Bridge, screw coil', target: 12_345, lookEvery: 10_240 }, workshop);
+		const page = await screenOf(server, workshop.maker, { viewport: screen.viewport, sound: 'ask' });
+		const hand = new HandWinder(server, winder);
+		const wrong: Record<string, string[]> = {};
+		const bench = new BenchPage(page);
+		/** A page that is new asks anew, once it has been touched. */
+		const look = async (state: string, own: string) => {
+			await bench.open(server, winder);
+			await expect(bench.tap(own)).toBeVisible();
+			await expect(bench.says('sound is off – tap')).toBeVisible();
+			await bench.count.click();
+			await expect(bench.tap('Yes, I heard it')).toBeVisible();
+			const found = await judge(page, screen);
+			if (found.length > 0) wrong[state] = found;
+		};
+		try {
+			await hand.link();
+			await look('waiting', 'Start this coil');
+			await hand.turn(10_237);
+			await hand.stop();
+			await look('at a look', 'Looks even');
+			await bench.press('Looks even', bench.tap('Keep as it is'));
+			await look('paused', 'Keep as it is');
+			await hand.turn(2_108);
+			await hand.stop();
+			await look('on count', 'Keep this coil');
+			expect(wrong).toEqual({});
+		} finally {
+			await hand.end();
+		}
+	});
+
 	test(`on a ${screen.name} no page is wider than the screen`, async ({ shop, screenOf }) => {
 		const { server, workshop } = shop;
 		const winder = await server.addWinder(handSettings, workshop);

@@ -1,17 +1,21 @@
+import type { Page } from '@playwright/test';
+import type { FactKind } from '../../src/lib/winding/types.ts';
 import { BenchPage } from './bench-page.ts';
 import { HandWinder, handSettings } from './hand-winder.ts';
 import { expect, test, type Shop } from './fixtures.ts';
 
-async function endings({ server, workshop }: Shop): Promise<string[]> {
+async function factKinds({ server, workshop }: Shop, kinds: FactKind[]): Promise<string[]> {
 	const facts = await server.database.owner
 		.selectFrom('fact')
 		.select('kind')
 		.where('workshop_id', '=', workshop.id)
-		.where('kind', 'in', ['kept', 'undone', 'set-aside'])
+		.where('kind', 'in', kinds)
 		.orderBy('no')
 		.execute();
 	return facts.map(({ kind }) => kind);
 }
+
+const endings = (shop: Shop) => factKinds(shop, ['kept', 'undone', 'set-aside']);
 
 async function runs({ server, workshop }: Shop) {
 	return server.database.owner
@@ -39,6 +43,114 @@ async function view(hand: HandWinder): Promise<{ run: { state: string } | null }
 	});
 	return (await answer.json()) as { run: { state: string } | null };
 }
+
+/** The kinds of tap this page sends from now on, as they are asked for. */
+function tapsOf(page: Page): string[] {
+	const kinds: string[] = [];
+	page.on('request', (request) => {
+		if (request.method() !== 'POST' || !request.url().endsWith('/taps')) return;
+		kinds.push((request.postDataJSON() as { kind: string }).kind);
+	});
+	return kinds;
+}
+
+const soundMessage = 'sound is off – tap';
+
+for (const by of ['mouse', 'touch'] as const) {
+	test(`the first ${by === 'mouse' ? 'click' : 'touch'} in a new browser keeps the coil, and does not hide undo`, async ({
+		shop,
+		screenOf
+	}) => {
+		const hand = await onCount(shop);
+		try {
+			const page = await screenOf(shop.server, shop.workshop.maker, { sound: 'ask', hasTouch: by === 'touch' });
+			const sent = tapsOf(page);
+			const bench = await new BenchPage(page).open(shop.server, hand.winder);
+			await expect(bench.says(soundMessage)).toBeVisible();
+			await (by === 'touch' ? bench.keep.tap() : bench.keep.click());
+			await expect(bench.word).toHaveText('Kept');
+			await expect(bench.undo).toBeEnabled();
+			await expect(bench.says(soundMessage)).toHaveCount(0);
+			await expect(bench.tap('Yes, I heard it')).toHaveCount(0);
+			await expect.poll(() => endings(shop)).toEqual(['kept']);
+			await expect.poll(() => runs(shop)).toEqual([{ coil_name: 'Bridge', state: 'kept', on_bobbin: 300 }]);
+			expect(sent).toEqual(['keep']);
+		} finally {
+			await hand.end();
+		}
+	});
+}
+
+test('the first tap in a new browser starts the coil, and then the sound is asked about', async ({
+	shop,
+	screenOf
+}) => {
+	const { server, workshop } = shop;
+	const winder = await server.addWinder(handSettings, workshop);
+	await server.addCoil({ name: 'Bridge', target: 300, lookEvery: 0 }, workshop);
+	const hand = new HandWinder(server, winder);
+	try {
+		const page = await screenOf(server, workshop.maker, { sound: 'ask' });
+		const sent = tapsOf(page);
+		const bench = await new BenchPage(page).open(server, winder);
+		await hand.link();
+		await expect(bench.says(soundMessage)).toBeVisible();
+		await bench.tap('Start this coil').click();
+		await expect(bench.word).toHaveText('Stopped');
+		await expect(bench.says('Did you hear it?')).toBeVisible();
+		await bench.tap('Yes, I heard it').click();
+		await expect(bench.tap('Yes, I heard it')).toHaveCount(0);
+		await expect(bench.tap('Set aside')).toBeVisible();
+		await expect.poll(() => factKinds(shop, ['started', 'moved'])).toEqual(['started']);
+		expect(sent).toEqual(['start']);
+	} finally {
+		await hand.end();
+	}
+});
+
+test('the first tap in a new browser answers a look', async ({ shop, screenOf }) => {
+	const { server, workshop } = shop;
+	const winder = await server.addWinder(handSettings, workshop);
+	await server.addCoil({ name: 'Bridge', target: 1_000, lookEvery: 500 }, workshop);
+	const hand = new HandWinder(server, winder);
+	try {
+		const page = await screenOf(server, workshop.maker, { sound: 'ask' });
+		const sent = tapsOf(page);
+		const bench = await new BenchPage(page).open(server, winder);
+		await hand.link();
+		await expect(bench.says(soundMessage)).toBeVisible();
+		await hand.turn(98);
+		await hand.stop();
+		await bench.tap('Looks even').click();
+		await expect(bench.word).toHaveText('Paused');
+		await expect.poll(() => factKinds(shop, ['look-seen', 'look-passed'])).toEqual(['look-seen']);
+		expect(sent).toEqual(['look']);
+	} finally {
+		await hand.end();
+	}
+});
+
+test('a touch beside the taps wakes the sound, and its question leaves the taps where they do what they say', async ({
+	shop,
+	screenOf
+}) => {
+	const hand = await onCount(shop);
+	try {
+		const page = await screenOf(shop.server, shop.workshop.maker, { sound: 'ask' });
+		const sent = tapsOf(page);
+		const bench = await new BenchPage(page).open(shop.server, hand.winder);
+		await expect(bench.says(soundMessage)).toBeVisible();
+		await bench.count.click();
+		await expect(bench.tap('No, screen only')).toBeVisible();
+		expect(sent).toEqual([]);
+		await bench.keep.click();
+		await expect(bench.word).toHaveText('Kept');
+		await expect.poll(() => endings(shop)).toEqual(['kept']);
+		expect(sent).toEqual(['keep']);
+	} finally {
+		await hand.end();
+	}
+});
 
 test('a double tap on keep keeps once and undoes nothing', async ({ shop, screenOf }) => {
 	const hand = await onCount(shop);
