@@ -1,20 +1,11 @@
 import { sql, type Kysely, type Transaction } from 'kysely';
 import type { CoilPlan, Fact, RunFigures } from '../../winding/types.ts';
+import type { KeptLine } from '../../winding/winder.ts';
 import { backToHead } from './coils.ts';
 import type { Database } from './schema.ts';
 
-/** A line as it is kept. `t` is unwrapped device milliseconds. */
-export interface LineRow {
-	b: string;
-	n: number;
-	e: number;
-	k: string | null;
-	f: number;
-	v: number;
-	r: number | null;
-	t: number;
-	x: number | null;
-	g: number | null;
+/** A line as it is kept, and when it came (Unix ms). */
+export interface LineRow extends KeptLine {
 	receivedAt: number;
 }
 
