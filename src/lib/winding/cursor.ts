@@ -1,27 +1,12 @@
-import { addLine, copyBoot } from './boot.ts';
+import { addLine, copyBoot, type BootState } from './boot.ts';
 import type { WinderState } from './state.ts';
 
-/** The cursor of a boot: what of it is taken in, small enough to be written with every batch. */
-
-/** What is taken in of the current boot: committed with every batch. A jump that waits for a word is not in it. */
-export interface Cursor {
-	boot: string;
-	n: number;
-	e: number;
-	forward: number;
-	reverse: number;
-	t: number;
-}
-
-export function cursorOf(state: WinderState): Cursor | null {
-	const boot = state.boots[0];
-	if (!boot) return null;
-	return { boot: boot.b, n: boot.n, e: boot.e, forward: boot.f, reverse: boot.v, t: boot.t };
-}
+/** What is taken in of a boot, small enough to be written with every batch. A jump that waits for a word is not in it. */
+export type Cursor = Pick<BootState, 'b' | 'n' | 'e' | 'f' | 'v' | 't'>;
 
 /** A cursor that committed after the state was last written: the greatest totals win. */
 export function mergeCursor(state: WinderState, cursor: Cursor): WinderState {
-	const known = state.boots.find((boot) => boot.b === cursor.boot);
+	const known = state.boots.find((boot) => boot.b === cursor.b);
 	if (!known) return state;
 	const boot = copyBoot(known);
 	if (cursor.n > boot.n) addLine(boot, cursor.n, 0);
@@ -33,8 +18,8 @@ export function mergeCursor(state: WinderState, cursor: Cursor): WinderState {
 	boot.eBeyond = boot.eBeyond.filter((e) => e > boot.e);
 	boot.eTop = Math.max(boot.eTop, boot.e);
 	if (!boot.held) {
-		boot.f = Math.max(boot.f, cursor.forward);
-		boot.v = Math.max(boot.v, cursor.reverse);
+		boot.f = Math.max(boot.f, cursor.f);
+		boot.v = Math.max(boot.v, cursor.v);
 	}
 	boot.t = Math.max(boot.t, cursor.t);
 	return { ...state, boots: state.boots.map((entry) => (entry === known ? boot : entry)) };

@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { Bench } from './bench-double.ts';
-import { askWhichWinder, changePlan, dropWaiting, idleTurns, mergeCursor, cursorOf, wantsCoil } from './winder.ts';
+import { askWhichWinder, changePlan, dropWaiting, idleTurns, mergeCursor, wantsCoil } from './winder.ts';
 
 /** A bench with a coil that has been started with a tap at zero. */
 function started(changes = {}, plan = {}): Bench {
@@ -880,7 +880,7 @@ describe('a server that was killed', () => {
 		bench.turn(200, 600, false);
 		const snapshot = JSON.parse(JSON.stringify(bench.state));
 		bench.turn(7, 600, false);
-		const cursor = cursorOf(bench.state)!;
+		const cursor = bench.state.boots[0]!;
 		bench.state = mergeCursor(snapshot, cursor);
 		expect(bench.run.turns).toBe(207);
 		bench.turn(3, 600, false);

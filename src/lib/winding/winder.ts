@@ -15,4 +15,4 @@ export { askWhichWinder, changePlan, dropWaiting, firstLookTurns, takeCoil, want
 export { passTime } from './time.ts';
 export { ackOf, commands } from './commands.ts';
 export { figuresOf, idleTurns, runIdsOf, viewOf, type WinderView } from './view.ts';
-export { cursorOf, mergeCursor, type Cursor } from './cursor.ts';
+export { mergeCursor, type Cursor } from './cursor.ts';

@@ -1,6 +1,6 @@
 import { sql, type Kysely, type Transaction } from 'kysely';
 import type { CoilPlan, Fact, RunFigures } from '../../winding/types.ts';
-import type { KeptLine } from '../../winding/winder.ts';
+import type { Cursor as TakenIn, KeptLine } from '../../winding/winder.ts';
 import { backToHead } from './coils.ts';
 import type { Database } from './schema.ts';
 
@@ -10,13 +10,7 @@ export interface LineRow extends KeptLine {
 }
 
 /** What is taken in of a boot; it commits with every batch of its lines. */
-export interface Cursor {
-	b: string;
-	n: number;
-	e: number;
-	f: number;
-	v: number;
-	t: number;
+export interface Cursor extends TakenIn {
 	firstAt: number;
 	lastAt: number;
 }

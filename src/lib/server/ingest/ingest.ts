@@ -702,10 +702,7 @@ export class IngestCore implements Ingest {
 		const seated = this.#seats.get(key);
 		if (seated) return seated;
 		let state = (saved.state as WinderState | null) ?? newWinder();
-		for (const cursor of saved.cursors) {
-			const { b: boot, n, e, f: forward, v: reverse, t } = cursor;
-			state = mergeCursor(state, { boot, n, e, forward, reverse, t });
-		}
+		for (const cursor of saved.cursors) state = mergeCursor(state, cursor);
 		let shop = this.#shops.get(workshopId);
 		if (!shop) {
 			// Only a new shop takes over the queue as it was read here: one that is there may have read it since.
