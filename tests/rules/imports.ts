@@ -12,7 +12,12 @@ export interface Source {
 }
 
 /** The pure libraries, and which others each may import besides itself and zod. */
-const pure: Record<string, string[]> = { turnline: [], winding: ['turnline'], coil: ['winding'] };
+const pure: Record<string, string[]> = {
+	turnline: [],
+	winding: ['turnline'],
+	coil: ['winding'],
+	spec: ['coil', 'winding']
+};
 /** What stands outside and speaks the line, and which libraries of `src` it may import. */
 const outside: Record<string, string[]> = { simulator: ['turnline', 'winding'], 'firmware-protocol': ['turnline'] };
 const databasePackages = ['pg', 'kysely'];

@@ -1,3 +1,4 @@
+import { z } from 'zod';
 import { awgDiameterM, awgOfDiameter, metresPerInch } from './wire.ts';
 
 /**
@@ -232,16 +233,22 @@ export function shownValue<Q extends Quantity>(si: number, quantity: Q, unit: Un
 }
 
 /** Units by which a person wants values shown. */
-export interface UnitPreference {
-	length: UnitOf<'length'>;
-	wireDiameter: UnitOf<'wireDiameter'>;
-	temperature: UnitOf<'temperature'>;
-	resistance: UnitOf<'resistance'>;
-}
+export const unitPreference = z.strictObject({
+	length: z.enum(['mm', 'inch']),
+	wireDiameter: z.enum(['awg', 'mm', 'inch']),
+	temperature: z.enum(['celsius', 'fahrenheit']),
+	resistance: z.enum(['kilohm', 'ohm']),
+	mass: z.enum(['gram', 'ounce'])
+});
+export type UnitPreference = z.infer<typeof unitPreference>;
 
 export const usualUnits: UnitPreference = {
 	length: 'mm',
 	wireDiameter: 'awg',
 	temperature: 'celsius',
-	resistance: 'kilohm'
+	resistance: 'kilohm',
+	mass: 'gram'
 };
+
+/** A length of wire by the same choice as other lengths: metres or feet. */
+export const wireLengthUnit = (units: UnitPreference): UnitOf<'length'> => (units.length === 'inch' ? 'foot' : 'm');

@@ -11,7 +11,14 @@ const shown = [
 	'winder.see',
 	'winder.change',
 	'people.change',
-	'workshop.change'
+	'workshop.change',
+	'spec.see',
+	'spec.change',
+	'spool.see',
+	'spool.change',
+	'meter.change',
+	'reading.add',
+	'reading.strike'
 ] as const satisfies Action[];
 
 export const load: LayoutServerLoad = async ({ locals, depends }) => {
@@ -24,7 +31,8 @@ export const load: LayoutServerLoad = async ({ locals, depends }) => {
 			role: member.role,
 			email: member.email,
 			workshopName: member.workshopName,
-			timeZone: member.timeZone
+			timeZone: member.timeZone,
+			units: member.units
 		},
 		waiting: await inWorkshop(locals.db, member.workshopId, (trx) => countWaiting(trx, member.workshopId)),
 		may: Object.fromEntries(shown.map((action) => [action, may(member.role, action)])) as Record<

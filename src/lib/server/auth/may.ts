@@ -20,6 +20,14 @@ const allowed = {
 	'queue.change': makers,
 	'book.read': everyone,
 	'book.note': makers,
+	'spec.see': everyone,
+	'spec.change': makers,
+	'spool.see': everyone,
+	'spool.change': makers,
+	'meter.change': makers,
+	/** Whoever holds the meter writes down what it shows; what is wrong in the record a maker strikes out. */
+	'reading.add': everyone,
+	'reading.strike': makers,
 	/** The page of a winder with its link and its lines; never its key. */
 	'winder.see': makers,
 	/** Add, set, remove; make or revoke a link key. */

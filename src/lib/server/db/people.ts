@@ -1,4 +1,5 @@
 import { sql, type Kysely, type Transaction } from 'kysely';
+import { unitPreference, usualUnits, type UnitPreference } from '../../coil/units.ts';
 import { inWorkshop } from './connect.ts';
 import type { Database, Role } from './schema.ts';
 
@@ -14,6 +15,8 @@ export interface Member {
 	workshopName: string;
 	/** IANA name, such as Europe/Berlin; times are shown in it. */
 	timeZone: string;
+	/** Units this person wants values shown in. */
+	units: UnitPreference;
 }
 
 /** What a session claims; true only while the epoch is the member's own. */
@@ -73,7 +76,7 @@ export async function findMember(db: Db, claims: SessionClaims): Promise<Member 
 		trx
 			.selectFrom('member as m')
 			.innerJoin('workshop as w', 'w.id', 'm.workshop_id')
-			.select(['m.name', 'm.role', 'm.email', 'w.name as workshop_name', 'w.time_zone'])
+			.select(['m.name', 'm.role', 'm.email', 'm.units', 'w.name as workshop_name', 'w.time_zone'])
 			.where('m.workshop_id', '=', claims.workshopId)
 			.where('m.id', '=', claims.memberId)
 			.where('m.session_epoch', '=', claims.epoch)
@@ -88,7 +91,9 @@ export async function findMember(db: Db, claims: SessionClaims): Promise<Member 
 		role: row.role,
 		email: row.email,
 		workshopName: row.workshop_name,
-		timeZone: row.time_zone
+		timeZone: row.time_zone,
+		// One choice more or less than this version knows is no reason to keep somebody out.
+		units: unitPreference.safeParse(row.units).data ?? usualUnits
 	};
 }
 
@@ -263,7 +268,7 @@ export async function findLinkHolder(db: Db, linkHash: Buffer): Promise<LinkHold
 		trx
 			.selectFrom('member as m')
 			.innerJoin('workshop as w', 'w.id', 'm.workshop_id')
-			.select(['m.name', 'm.email', 'w.name as workshop_name', 'w.short_name'])
+			.select(['m.name', 'm.email', 'm.units', 'w.name as workshop_name', 'w.short_name'])
 			.where('m.workshop_id', '=', found.workshop_id)
 			.where('m.id', '=', found.member_id)
 			.where('m.removed_at', 'is', null)

@@ -1,4 +1,7 @@
 import type { ColumnType, Generated, JSONColumnType, Kysely } from 'kysely';
+import type { MeterRange } from '../../coil/measurement.ts';
+import type { UnitPreference } from '../../coil/units.ts';
+import type { SpecContent, SpecWire } from '../../spec/content.ts';
 import type { Direction, Look, Snap, TopFaces } from '../../winding/types.ts';
 
 /** The tables as migrations/ leave them. bigint columns are read as numbers (all stay below 2^53); see connect.ts. */
@@ -25,6 +28,8 @@ export interface MemberTable {
 	role: Role;
 	password_hash: string | null;
 	session_epoch: Generated<number>;
+	/** null: the usual units. */
+	units: JSONColumnType<UnitPreference> | null;
 	created_at: WhenMade;
 	removed_at: When | null;
 }
@@ -73,6 +78,15 @@ export interface CoilTable {
 	again_of_run: string | null;
 	created_by: string | null;
 	created_at: WhenMade;
+	/** Where it comes from: all three or none. */
+	spec_id: string | null;
+	spec_revision_no: number | null;
+	spec_coil: number | null;
+	spool_id: string | null;
+	/** null: the usual one; 0: none. */
+	first_look: number | null;
+	/** Turns at which the wire reaches the flange; null: unknown. */
+	full_turns: number | null;
 }
 
 export interface RunTable {
@@ -104,6 +118,15 @@ export interface RunTable {
 	snaps: JSONColumnType<Snap[]> | null;
 	faults: JSONColumnType<string[]> | null;
 	note: Generated<string>;
+	/** Where it comes from: all three or none. */
+	spec_id: string | null;
+	spec_revision_no: number | null;
+	spec_coil: number | null;
+	spool_id: string | null;
+	/** null: the usual one; 0: none. */
+	first_look: number | null;
+	/** Turns at which the wire reaches the flange; null: unknown. */
+	full_turns: number | null;
 }
 
 export interface RunTraceTable {
@@ -164,6 +187,72 @@ export interface FactTable {
 	tap_id: string | null;
 }
 
+export interface SpecTable {
+	workshop_id: string;
+	id: Generated<string>;
+	created_by: string | null;
+	created_at: WhenMade;
+	put_away_at: When | null;
+}
+
+export interface SpecRevisionTable {
+	workshop_id: string;
+	spec_id: string;
+	no: number;
+	name: string;
+	content: JSONColumnType<SpecContent>;
+	why: Generated<string>;
+	created_by: string | null;
+	created_at: WhenMade;
+	saved_at: ColumnType<Date, Date | string | undefined, Date | string>;
+	used_at: When | null;
+}
+
+export interface SpoolTable {
+	workshop_id: string;
+	id: Generated<string>;
+	name: string;
+	lot: Generated<string>;
+	wire: JSONColumnType<SpecWire>;
+	note: Generated<string>;
+	created_by: string | null;
+	created_at: WhenMade;
+	ended_at: When | null;
+}
+
+export interface MeterTable {
+	workshop_id: string;
+	id: Generated<string>;
+	name: string;
+	ranges: JSONColumnType<MeterRange[]>;
+	created_at: WhenMade;
+	removed_at: When | null;
+}
+
+export type ReadingKind = 'resistance' | 'inductance' | 'outer-width';
+export type ReadingStage = 'wound' | 'leads' | 'tape' | 'assembled' | 'covered';
+
+export interface ReadingTable {
+	workshop_id: string;
+	id: Generated<string>;
+	run_id: string;
+	kind: ReadingKind;
+	stage: ReadingStage;
+	/** Ω, H or m; null: beyond every range of the meter. */
+	value: number | null;
+	temperature_c: number | null;
+	temperature_half_width_c: number | null;
+	meter_id: string | null;
+	meter_name: Generated<string>;
+	meter_range: JSONColumnType<MeterRange> | null;
+	half_width: number | null;
+	note: Generated<string>;
+	taken_at: ColumnType<Date, Date | string | undefined, Date | string>;
+	taken_by: string | null;
+	struck_at: When | null;
+	struck_by: string | null;
+}
+
 export interface Database {
 	workshop: WorkshopTable;
 	member: MemberTable;
@@ -176,6 +265,11 @@ export interface Database {
 	kept_line: KeptLineTable;
 	winder_state: WinderStateTable;
 	fact: FactTable;
+	spec: SpecTable;
+	spec_revision: SpecRevisionTable;
+	spool: SpoolTable;
+	meter: MeterTable;
+	reading: ReadingTable;
 }
 
 /** A handle on the database, for those who pass it on and never write a query themselves. */
