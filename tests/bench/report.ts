@@ -1,4 +1,4 @@
-import { figure, median } from './statistics.ts';
+import { figure, median, percentile } from './statistics.ts';
 import { markdownTable } from './table.ts';
 
 export interface LatencyFigures {
@@ -33,6 +33,17 @@ export interface MemoryFigures {
 	to: number;
 	aimBytes: number;
 	stalled: { sentBytes: number; heapBytes: number; rssBytes: number };
+}
+
+export interface InductanceFigures {
+	/** Milliseconds of each round. */
+	inductance: number[];
+	prediction: number[];
+	plain: number[];
+	/** Terms of the plain sum. */
+	pairs: number;
+	rounds: number;
+	aimMs: number;
 }
 
 /** What was measured, as Markdown. */
@@ -97,6 +108,32 @@ export class Report {
 		this.#parts.push(
 			`SIGTERM to exit with ${winders} links and ${winders} streams open: ${figure(median(took))} ms` +
 				(took.length > 1 ? ` (median of ${took.length}, ${span(took)}).` : '.')
+		);
+	}
+
+	inductance({ inductance, prediction, plain, pairs, rounds, aimMs }: InductanceFigures): void {
+		const reference = median(plain);
+		const row = (way: string, ms: readonly number[], aim: boolean) => [
+			way,
+			figure(median(ms)),
+			figure(percentile(ms, 0.95)),
+			figure(median(ms) / reference),
+			aim ? `≤ ${aimMs} ms ${kept(percentile(ms, 0.95) <= aimMs)}` : ''
+		];
+		this.#parts.push(
+			`What a slider waits for, a pickup of two coils, ${rounds} rounds each at other turns:`,
+			markdownTable(
+				['work', 'p50 ms', 'p95 ms', 'of plain sum', 'aim'],
+				[
+					row(
+						`one pair of filaments as a plain double sum of ${figure(pairs).replace(/\.\d+$/, '')} terms`,
+						plain,
+						false
+					),
+					row('inductance of both coils and between them', inductance, true),
+					row('the whole prediction with every uncertainty', prediction, true)
+				]
+			)
 		);
 	}
 

@@ -7,6 +7,7 @@ import { ensureBuilt } from '../../src/commands/build.ts';
 import { PlainError } from '../../src/commands/plain-error.ts';
 import { measureDurable } from './measure-durable.ts';
 import { measureExit } from './measure-exit.ts';
+import { measureInductance } from './measure-inductance.ts';
 import { levels, measureLatency } from './measure-latency.ts';
 import { measureMemory } from './measure-memory.ts';
 import { Report } from './report.ts';
@@ -14,10 +15,10 @@ import { prepareGround, type Ground } from './workshop.ts';
 
 const help = `Measures the built server beside references in the same run, and prints Markdown.
 
-  npm run bench -- [--quick] [--only latency|durable|memory|exit] [--winders 1|20|100] [--profile folder]
+  npm run bench -- [--quick] [--only latency|durable|memory|exit|inductance] [--winders 1|20|100] [--profile folder]
 
   --quick    fewer and shorter rounds: a look, no figures to keep
-  --only     one of the four measurements; may be given more than once
+  --only     one of the five measurements; may be given more than once
   --winders  latency with so many alone; may be given more than once
   --profile  writes what the server spends its time on into a folder (.cpuprofile, which slows it)
 
@@ -27,7 +28,8 @@ const measurements = {
 	latency: measureLatency,
 	durable: measureDurable,
 	memory: measureMemory,
-	exit: measureExit
+	exit: measureExit,
+	inductance: measureInductance
 };
 type Name = keyof typeof measurements;
 
