@@ -80,7 +80,9 @@ function play({ seed, target = 700, direction = 'counter-clockwise', mishap = nu
 		lookEvery: 250,
 		direction,
 		topFaces: 'out',
-		toleranceTurns: 2
+		toleranceTurns: 2,
+		firstLook: null,
+		fullTurns: null
 	};
 	let state = takeCoil(newWinder(), config, { runId, plan: coil, sticker: 'A1' }, wallStart).state;
 	const questions = new Set<string>();

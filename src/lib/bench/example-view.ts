@@ -14,7 +14,9 @@ export function aRun(part: Partial<RunView> = {}): RunView {
 			lookEvery: 500,
 			direction: 'counter-clockwise',
 			topFaces: 'out',
-			toleranceTurns: 5
+			toleranceTurns: 5,
+			firstLook: null,
+			fullTurns: null
 		},
 		target,
 		left: target - onBobbin,

@@ -25,7 +25,9 @@ export const plan: CoilPlan = {
 	lookEvery: 500,
 	direction: 'counter-clockwise',
 	topFaces: 'out',
-	toleranceTurns: 5
+	toleranceTurns: 5,
+	firstLook: null,
+	fullTurns: null
 };
 
 const startAt = 1_764_000_000_000;

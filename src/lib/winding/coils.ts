@@ -28,9 +28,7 @@ export function takeCoil(
 	const d = draft(state, config, now);
 	const { s } = d;
 	const fresh = s.lastEndedAt === null || now - s.lastEndedAt > sessionRestMs;
-	const { lookEvery, target } = coil.plan;
-	const first = fresh && lookEvery > firstLookTurns && target > 2 * firstLookTurns ? firstLookTurns : 0;
-	const run = newRun(coil.runId, coil.plan, coil.sticker, now, first);
+	const run = newRun(coil.runId, coil.plan, coil.sticker, now, fresh ? firstLookOf(coil.plan) : 0);
 
 	const boot = s.boots[0];
 	if (boot) {
@@ -60,6 +58,15 @@ export function takeCoil(
 		follow(d, boot, point, boot.turning, 0);
 	}
 	return { state: s, facts: d.facts };
+}
+
+/**
+ * The early look of a session's first coil, 0 for none: only where it comes before the interval would bring one anyway, and
+ * in the first half of the coil. A plan that asks for none by interval has one only where it says so.
+ */
+function firstLookOf({ firstLook, lookEvery, target }: CoilPlan): number {
+	const first = firstLook ?? (lookEvery > 0 ? firstLookTurns : 0);
+	return (lookEvery === 0 || first < lookEvery) && 2 * first < target ? first : 0;
 }
 
 /** No coil on the bench and none up next. */

@@ -59,6 +59,10 @@ export interface CoilPlan {
 	topFaces: TopFaces;
 	/** On count within this many turns either side. */
 	toleranceTurns: number;
+	/** Turns of one early look on the first coil of a session, 0 for none; null: the usual one. */
+	firstLook: number | null;
+	/** Turns at which the wire reaches the flange; null: not known. */
+	fullTurns: number | null;
 }
 
 /** The marks at which cues come, in turns of the run; see cues.ts. */

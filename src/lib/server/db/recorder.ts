@@ -426,7 +426,9 @@ export async function readWinder(trx: Trx, workshopId: string, winderId: string)
 				lookEvery: row.look_every,
 				direction: row.direction,
 				topFaces: row.top_faces,
-				toleranceTurns: row.tolerance_turns
+				toleranceTurns: row.tolerance_turns,
+				firstLook: row.first_look,
+				fullTurns: row.full_turns
 			}
 		}))
 	};
@@ -475,7 +477,9 @@ export async function planOfOpenRun(
 			look_every: coil.look_every,
 			direction: coil.direction,
 			top_faces: coil.top_faces,
-			tolerance_turns: coil.tolerance_turns
+			tolerance_turns: coil.tolerance_turns,
+			first_look: coil.first_look,
+			full_turns: coil.full_turns
 		})
 		.where('workshop_id', '=', workshopId)
 		.where('coil_id', '=', coilId)
@@ -494,7 +498,9 @@ export async function planOfOpenRun(
 			lookEvery: coil.look_every,
 			direction: coil.direction,
 			topFaces: coil.top_faces,
-			toleranceTurns: coil.tolerance_turns
+			toleranceTurns: coil.tolerance_turns,
+			firstLook: coil.first_look,
+			fullTurns: coil.full_turns
 		}
 	};
 }
