@@ -28,6 +28,7 @@ export function takeCoil(
 	const d = draft(state, config, now);
 	const { s } = d;
 	const fresh = s.lastEndedAt === null || now - s.lastEndedAt > sessionRestMs;
+	const { target } = coil.plan;
 	const run = newRun(coil.runId, coil.plan, coil.sticker, now, fresh ? firstLookOf(coil.plan) : 0);
 
 	const boot = s.boots[0];

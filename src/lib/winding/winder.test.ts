@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { Bench } from './bench-double.ts';
-import { askWhichWinder, changePlan, dropWaiting, idleTurns, mergeCursor, wantsCoil } from './winder.ts';
+import { askWhichWinder, changePlan, commands, dropWaiting, idleTurns, mergeCursor, wantsCoil } from './winder.ts';
 
 /** A bench with a coil that has been started with a tap at zero. */
 function started(changes = {}, plan = {}): Bench {
@@ -77,6 +77,24 @@ describe('a coil from start to kept', () => {
 		expect(bench.run.state).toBe('waiting');
 		expect(bench.run.firstLook).toBe(0);
 		expect(bench.run.nextLook).toBe(500);
+	});
+
+	it('is looked at early where its spec says so, or not at all', () => {
+		expect(started({}, { firstLook: 250 }).run).toMatchObject({ firstLook: 250, nextLook: 250 });
+		expect(started({}, { firstLook: 0 }).run).toMatchObject({ firstLook: 0, nextLook: 500 });
+		expect(started({}, { firstLook: 60, lookEvery: 0 }).run).toMatchObject({ firstLook: 60, nextLook: 60 });
+		expect(started({}, { lookEvery: 0 }).run).toMatchObject({ firstLook: 0, nextLook: null });
+	});
+
+	it('has no early look that is not early', () => {
+		expect(started({}, { firstLook: 500 }).run).toMatchObject({ firstLook: 0, nextLook: 500 });
+		expect(started({}, { firstLook: 600, lookEvery: 0 }).run).toMatchObject({ firstLook: 0, nextLook: null });
+	});
+
+	it('tells the winder of the early look of its spec', () => {
+		const bench = started({}, { firstLook: 250 });
+		const { lines } = commands(bench.state, bench.config, bench.now, 'all');
+		expect(lines.find((line) => line.verb === 'SET')).toMatchObject({ look: 500, fst: 250 });
 	});
 
 	it('begins by turning and says how many turns ago it moved', () => {
