@@ -1,7 +1,7 @@
 import { error } from '@sveltejs/kit';
 import { sheetTimeText, wholeText } from '$lib/format';
 import { guard } from '$lib/server/auth/guard';
-import { csvFile } from '$lib/server/csv';
+import { csvFile } from '$lib/csv';
 import { bookTotals, listBook } from '$lib/server/db/book';
 import { inWorkshop } from '$lib/server/db/connect';
 import { parseBookQuery } from '../find';
