@@ -65,10 +65,43 @@ describe('winding', () => {
 
 	it('the copper stands as high as the part that is wound, with a mark at each look', () => {
 		const model = show(run({ onBobbin: 2_660 }));
-		expect(model.copper).toBe(0.5);
+		expect(model.copper).toBeCloseTo(0.465, 9);
+		expect(model.target).toBeCloseTo(0.93, 9);
 		expect(model.marks).toHaveLength(11);
-		expect(model.marks[0]).toBeCloseTo(100 / 5_320, 9);
+		expect(model.marks[0]).toBeCloseTo((0.93 * 100) / 5_320, 9);
 		expect(show(run({ onBobbin: -4 })).copper).toBe(0);
+	});
+
+	it('on a bobbin whose room is known, copper and marks stand where they are between the flanges', () => {
+		const coil = { ...aRun().coil, fullTurns: 8_000 };
+		const model = show(run({ coil, onBobbin: 2_000 }));
+		expect(model).toMatchObject({ copper: 0.25, target: 0.665 });
+		expect(model.marks).toHaveLength(11);
+		expect(model.marks).toContain(0.0125);
+		expect(Math.max(...model.marks)).toBe(0.625);
+	});
+
+	it('copper that would stand above the flange ends at it, and so does the mark', () => {
+		const coil = { ...aRun().coil, fullTurns: 4_000 };
+		const model = show(run({ coil, onBobbin: 5_000 }));
+		expect(model).toMatchObject({ copper: 1, target: 1 });
+		expect(Math.max(...model.marks)).toBe(0.875);
+	});
+
+	it('says before the start, and only then, that the flange is too low for the target', () => {
+		const words = 'this many turns stand above the flange: full at 4,000';
+		const coil = { ...aRun().coil, fullTurns: 4_000 };
+		const waiting = { state: 'waiting', startedAt: null, onBobbin: 0 } as const;
+		expect(show(run({ ...waiting, coil }, still)).messages[0]).toBe(words);
+		expect(show(run({ coil })).messages).toEqual([]);
+		expect(show(run({ ...waiting, coil: { ...coil, fullTurns: 5_320 } }, still)).messages).not.toContain(words);
+		expect(show(run(waiting, still)).messages).not.toContain(words);
+	});
+
+	it('a run kept by a release that knew no flanges is shown as before', () => {
+		const coil: Partial<RunView['coil']> = { ...aRun().coil };
+		delete coil.fullTurns;
+		expect(show(run({ coil: coil as RunView['coil'], onBobbin: 2_660 })).copper).toBeCloseTo(0.465, 9);
 	});
 
 	it('marks that would run together are not drawn', () => {

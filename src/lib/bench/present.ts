@@ -97,10 +97,11 @@ export interface BenchModel {
 	/** What the one key or pedal does now, and what holding it does. */
 	pedal: BenchTap | null;
 	pedalHeld: BenchTap | null;
-	/** Height of the winding, 0 to 1 of the target's height, above 1 when over. */
+	/** Height of the winding, as a part of the flanges': 0 to 1, and no further however much is wound. */
 	copper: number;
-	/** Look marks as parts of the target. */
+	/** Heights of the looks' marks and of the target's, likewise. */
 	marks: number[];
+	target: number;
 	/** Read out politely and at once; change only with the state, never with the count. */
 	status: string;
 	alert: string;
@@ -176,8 +177,10 @@ const waitingShownAfterMs = 400;
 /** The server sends a beat every 2 s; what is later than this was held up. */
 const silenceShownAfterMs = 2_600;
 const delayShownAfterMs = 1_000;
-/** Most look marks drawn; more would run together. */
+/** Most look marks on the whole flange; more would run together. */
 const marksMax = 60;
+/** Where nobody knows how much the bobbin holds: so far below the top that what is over can still be seen rising. */
+const targetAtUnknown = 0.93;
 
 const noticeText: Record<Notice, string> = {
 	bouncing: 'sensor is bouncing',
@@ -347,8 +350,9 @@ export function present(
 		link: options.access !== 'ok' ? '' : view.notices.includes('signed-off') ? 'signed off' : linkWords[link],
 		winder: view.winderName,
 		messages,
-		copper: run && run.target > 0 ? Math.max(0, run.onBobbin / run.target) : 0,
+		copper: run ? heightAt(run, run.onBobbin) : 0,
 		marks: run ? marksOf(run) : [],
+		target: run ? heightAt(run, run.target) : targetAtUnknown,
 		sound: soundOf(view, run, link),
 		standing: !turning,
 		title: `${shown.word}${count === null ? '' : ` ${wholeText(count)}`} · ${view.winderName} · Turnstead`,
@@ -827,6 +831,9 @@ function messagesOf(
 	if (options.refusal !== null) messages.push(options.refusal);
 	const remark = turning && run ? questionRemark(run) : null;
 	if (remark !== null) messages.push(remark);
+	if (run?.startedAt === null && run.target > (fullTurnsOf(run) ?? Infinity)) {
+		messages.push(`this many turns stand above the flange: full at ${wholeText(fullTurnsOf(run)!)}`);
+	}
 	if (!view.saving) messages.push('counting, not saving');
 	// A commit under way is no news; facts held back by a database that is away are.
 	const unsaved = Math.max(
@@ -878,13 +885,27 @@ function messagesOf(
 	return messages;
 }
 
-/** Every look of the coil as a part of its target. */
+/** Turns at which the wire reaches the flange. A state kept by an earlier release does not say; null: not known. */
+const fullTurnsOf = (run: RunView): number | null => run.coil.fullTurns ?? null;
+
+/** Turns that bring the winding to the top of the flanges as they are drawn. */
+const topTurnsOf = (run: RunView): number => fullTurnsOf(run) ?? run.target / targetAtUnknown;
+
+/** How high turns stand, as a part of the flanges': each lays as much on as the one before it. */
+function heightAt(run: RunView, turns: number): number {
+	const top = topTurnsOf(run);
+	return top > 0 ? Math.min(1, Math.max(0, turns / top)) : 0;
+}
+
+/** Every look of the coil that lies within the flanges. */
 function marksOf(run: RunView): number[] {
+	const top = topTurnsOf(run);
+	const below = Math.min(run.target, top);
 	const marks: number[] = [];
-	if (run.firstLook > 0 && run.firstLook < run.target) marks.push(run.firstLook / run.target);
+	if (run.firstLook > 0 && run.firstLook < below) marks.push(run.firstLook / top);
 	const every = run.coil.lookEvery;
-	if (every > 0 && run.target / every <= marksMax) {
-		for (let at = every; at < run.target; at += every) if (at !== run.firstLook) marks.push(at / run.target);
+	if (every > 0 && top / every <= marksMax) {
+		for (let at = every; at < below; at += every) if (at !== run.firstLook) marks.push(at / top);
 	}
 	return marks;
 }
