@@ -1,0 +1,8 @@
+export {
+	agreementWords,
+	contributionWords,
+	plusMinus,
+	refusedSentence,
+	type AgreementWords,
+	type PlusMinus
+} from './words.ts';
