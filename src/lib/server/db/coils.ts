@@ -15,8 +15,27 @@ export interface CoilInput {
 	toleranceTurns: number;
 }
 
+/** The coil of a spec's revision that a coil or a run comes from. */
+export interface SpecRef {
+	id: string;
+	/** Of the revision. */
+	no: number;
+	/** Index of the coil in it. */
+	coil: number;
+}
+
+/** What a coil has from its spec, and its run from it; all null for one that was put in the queue by hand. */
+export interface FromSpec {
+	spec: SpecRef | null;
+	spoolId: string | null;
+	/** Turns of one early look on the first coil of a session; null: the usual ones, 0: none. */
+	firstLook: number | null;
+	/** Turns at which the wire reaches the flange; null: unknown. */
+	fullTurns: number | null;
+}
+
 /** A coil of the queue: waiting, or on a bench. */
-export interface Coil extends CoilInput {
+export interface Coil extends CoilInput, FromSpec {
 	id: string;
 	place: number;
 	state: 'waiting' | 'on-bench' | 'wound' | 'removed';
@@ -92,12 +111,12 @@ export async function findCoil(trx: Trx, workshopId: string, coilId: string): Pr
 	return row ? toCoil(row) : null;
 }
 
-/** At the end of the queue. Afterwards tell `ingest.queueChanged`. */
+/** At the end of the queue. Afterwards tell `ingest.queueChanged`. Spec and spool are this workshop's own. */
 export async function addCoil(
 	trx: Trx,
 	workshopId: string,
 	coil: CoilInput,
-	more: { createdBy: string | null; againOfRun?: string | null }
+	more: { createdBy: string | null; againOfRun?: string | null } & Partial<FromSpec>
 ): Promise<Coil> {
 	const row = await trx
 		.insertInto('coil')
@@ -106,6 +125,12 @@ export async function addCoil(
 			...columns(coil),
 			created_by: more.createdBy,
 			again_of_run: more.againOfRun ?? null,
+			spec_id: more.spec?.id ?? null,
+			spec_revision_no: more.spec?.no ?? null,
+			spec_coil: more.spec?.coil ?? null,
+			spool_id: more.spoolId ?? null,
+			first_look: more.firstLook ?? null,
+			full_turns: more.fullTurns ?? null,
 			place: eb
 				.selectFrom('coil')
 				.where('workshop_id', '=', workshopId)
@@ -253,7 +278,13 @@ export async function takeNextCoil(
 			top_faces: row.top_faces,
 			tolerance_turns: row.tolerance_turns,
 			taken_at: takenAt,
-			sticker
+			sticker,
+			spec_id: row.spec_id,
+			spec_revision_no: row.spec_revision_no,
+			spec_coil: row.spec_coil,
+			spool_id: row.spool_id,
+			first_look: row.first_look,
+			full_turns: row.full_turns
 		})
 		.returning('id')
 		.executeTakeFirstOrThrow();
@@ -290,7 +321,9 @@ export function toPlan(coil: Coil): CoilPlan {
 		lookEvery: coil.lookEvery,
 		direction: coil.direction,
 		topFaces: coil.topFaces,
-		toleranceTurns: coil.toleranceTurns
+		toleranceTurns: coil.toleranceTurns,
+		firstLook: coil.firstLook,
+		fullTurns: coil.fullTurns
 	};
 }
 
@@ -342,6 +375,23 @@ function toCoil(row: Selectable<CoilTable>): Coil {
 		state: row.state,
 		winderId: row.winder_id,
 		againOfRun: row.again_of_run,
-		createdAt: row.created_at
+		createdAt: row.created_at,
+		...fromSpec(row)
+	};
+}
+
+/** Of a row of `coil` or `run`. */
+export function fromSpec(
+	row: Pick<
+		Selectable<CoilTable>,
+		'spec_id' | 'spec_revision_no' | 'spec_coil' | 'spool_id' | 'first_look' | 'full_turns'
+	>
+): FromSpec {
+	const { spec_id: id, spec_revision_no: no, spec_coil: coil } = row;
+	return {
+		spec: id === null || no === null || coil === null ? null : { id, no, coil },
+		spoolId: row.spool_id,
+		firstLook: row.first_look,
+		fullTurns: row.full_turns
 	};
 }

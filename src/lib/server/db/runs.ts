@@ -1,10 +1,12 @@
 import { sql, type Selectable, type Transaction } from 'kysely';
 import type { Direction, Look, Snap, TopFaces } from '../../winding/types.ts';
+import { fromSpec, type FromSpec } from './coils.ts';
 import { isUuid } from './ids.ts';
 import type { Database, RunTable } from './schema.ts';
+import { findSpool } from './spools.ts';
 
 /** One attempt at winding one coil, as the record keeps it. Figures are null while it is open. */
-export interface Run {
+export interface Run extends FromSpec {
 	id: string;
 	coilId: string;
 	winderId: string;
@@ -151,6 +153,24 @@ export async function noteRun(trx: Trx, workshopId: string, runId: string, note:
 	return result.numUpdatedRows > 0n ? 'ok' : 'not-found';
 }
 
+/** Says which spool a run's wire came from, or that nobody knows (null). An unknown or foreign spool is `not-found` too. */
+export async function setRunSpool(
+	trx: Trx,
+	workshopId: string,
+	runId: string,
+	spoolId: string | null
+): Promise<'ok' | 'not-found'> {
+	if (!isUuid(runId)) return 'not-found';
+	if (spoolId !== null && !(await findSpool(trx, workshopId, spoolId))) return 'not-found';
+	const result = await trx
+		.updateTable('run')
+		.set({ spool_id: spoolId })
+		.where('workshop_id', '=', workshopId)
+		.where('id', '=', runId)
+		.executeTakeFirst();
+	return result.numUpdatedRows > 0n ? 'ok' : 'not-found';
+}
+
 function runsWithNames(trx: Trx, workshopId: string) {
 	return trx
 		.selectFrom('run')
@@ -195,7 +215,8 @@ function toRun(row: Selectable<RunTable> & { winder_name: string; ended_by_name:
 		looks: row.looks ?? [],
 		snaps: row.snaps ?? [],
 		faults: row.faults ?? [],
-		note: row.note
+		note: row.note,
+		...fromSpec(row)
 	};
 }
 

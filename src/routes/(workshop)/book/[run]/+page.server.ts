@@ -84,7 +84,7 @@ export const actions: Actions = {
 		return { noteSaved: true };
 	},
 
-	/** The same target again: one coil of the same name, looks and direction at the end of the queue. */
+	/** The same again, spec, spool and all: one coil at the end of the queue. */
 	again: async ({ locals, params }) => {
 		const member = guard(locals, 'queue.change');
 		const { workshopId } = member;
@@ -93,11 +93,12 @@ export const actions: Actions = {
 			if (!run) return null;
 			const before = await findCoil(trx, workshopId, run.coilId);
 			const { name, target, lookEvery, direction, topFaces, toleranceTurns } = run;
+			const { spec, spoolId, firstLook, fullTurns } = run;
 			return addCoil(
 				trx,
 				workshopId,
 				{ name, target, lookEvery, direction, topFaces, toleranceTurns, note: before?.note ?? '' },
-				{ createdBy: member.id, againOfRun: run.id }
+				{ createdBy: member.id, againOfRun: run.id, spec, spoolId, firstLook, fullTurns }
 			);
 		});
 		if (!coil) error(404, nothing);

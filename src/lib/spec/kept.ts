@@ -1,0 +1,181 @@
+import { judge } from '../coil/band.ts';
+import { calibrate, type Calibration, type KeptCoil } from '../coil/calibrate.ts';
+import { airInductanceH, permeabilityFrom } from '../coil/inductance.ts';
+import { modelOhm, modelUncertainty } from '../coil/model.ts';
+import { windCoil, packingFromWidth } from '../coil/winding.ts';
+import { specLimits, type SpecContent, type SpecWire } from './content.ts';
+import { specModel, usualTemperatureC } from './model.ts';
+
+/** What coils that were wound on the same bobbin from the same spool, and measured, say about the next. SI. */
+
+/** One kept coil with the newest of each kind of its readings. */
+export interface KeptReading {
+	runId: string;
+	sticker: string;
+	name: string;
+	/** On the bobbin. */
+	turns: number;
+	/** ISO 8601, UTC. */
+	endedAt: string;
+	/** Of the spec it came from; null: wound without one. */
+	specRevisionNo: number | null;
+	/** As its own spec's revision says it. */
+	bobbin: { name: string; straightM: number; endDiameterM: number; traverseM: number };
+	/** Reading of resistance brought to 20 °C; null: none, or beyond every range of the meter (`open`). */
+	ohmAt20C: number | null;
+	/** The meter showed more than its widest range. */
+	open: boolean;
+	/** Its standard uncertainty, and the part that all readings with the same meter share. */
+	uncertaintyOhm: number;
+	meterOhm: number;
+	outerWidthM: number | null;
+	/** How far that width may be off either way. */
+	outerWidthHalfWidthM: number;
+	inductanceH: number | null;
+}
+
+export type LeftOutWhy =
+	| 'no-resistance'
+	| 'open-or-short'
+	/** Its bobbin of the same name has other figures. */
+	| 'other-figures'
+	/** Further from the model than wire and bobbin explain. */
+	| 'too-far'
+	/** Its reading is worth less than a fifth of itself. */
+	| 'too-unsure'
+	/** The spec's own figures cannot be reckoned with. */
+	| 'spec-refused';
+
+export interface KeptSay {
+	/** null: no coil to learn from. */
+	calibration: Calibration | null;
+	/** In the order of `calibration.kept`; `ratio` is measured over modelled, the shares add up to one. */
+	used: { runId: string; sticker: string; turns: number; ohmAt20C: number; ratio: number; share: number }[];
+	leftOut: { runId: string; sticker: string; why: LeftOutWhy }[];
+	/** Fitted from outer widths; null: nobody measured one. */
+	packing: { value: number; halfWidth: number; coils: number } | null;
+	/** Effective permeability fitted from inductances; null: nobody measured one with its iron in place. */
+	permeability: { value: number; coils: number } | null;
+}
+
+/** Core figures of one bobbin name may differ by this part: a file and a caliper; beyond it is another bobbin. No source. */
+export const figuresApartMax = 0.05;
+
+/** However well widths agree, the next coil of the same hands is packed this much differently. Common practice, no source. */
+export const packingHalfWidthMin = 0.02;
+
+/**
+ * Below this a coil was measured before its iron was in: half way from none to the least that rods, slugs or screws come to
+ * in the table of cores.
+ */
+export const ironPermeabilityMin = 1.15;
+
+/**
+ * The calibration that kept coils give a spec, coil by coil, with those left out and why; and what their widths and
+ * inductances say about packing and cores.
+ *
+ * @param spoolWire the spool's wire in place of the spec's
+ */
+export function calibrationOf(content: SpecContent, spoolWire: SpecWire | null, kept: readonly KeptReading[]): KeptSay {
+	const model = specModel(content, spoolWire);
+	const candidates: { reading: KeptReading; coil: KeptCoil }[] = [];
+	const leftOut: KeptSay['leftOut'] = [];
+	for (const reading of kept) {
+		const judged = usableCoil(model, content, reading);
+		if (typeof judged === 'string') leftOut.push({ runId: reading.runId, sticker: reading.sticker, why: judged });
+		else candidates.push({ reading, coil: judged });
+	}
+	// Each went through by itself, so all of them do.
+	const fitted =
+		candidates.length > 0
+			? calibrate(
+					model,
+					candidates.map(({ coil }) => coil)
+				)
+			: null;
+	const calibration = fitted?.ok ? fitted.value : null;
+	return {
+		calibration,
+		used: candidates.flatMap(({ reading, coil }, i) => {
+			const part = calibration?.coils[i];
+			if (!part) return [];
+			const { runId, sticker, turns } = reading;
+			return [{ runId, sticker, turns, ohmAt20C: coil.ohmAt20C, ...part }];
+		}),
+		leftOut,
+		packing: fittedPacking(content, model, kept),
+		permeability: fittedPermeability(content, model, kept)
+	};
+}
+
+type Model = ReturnType<typeof specModel>;
+
+function usableCoil(model: Model, content: SpecContent, reading: KeptReading): KeptCoil | LeftOutWhy {
+	if (!sameFigures(content, reading)) return 'other-figures';
+	if (reading.open) return 'open-or-short';
+	if (reading.ohmAt20C === null) return 'no-resistance';
+	const { turns, ohmAt20C, uncertaintyOhm, meterOhm } = reading;
+	const refused = windCoil({ ...model, turns, temperatureC: usualTemperatureC });
+	if (!refused.ok) return refused.field === 'turns' ? 'too-far' : 'spec-refused';
+	const modelled = modelOhm(model, [turns], 'single', usualTemperatureC);
+	const verdict = judge(
+		{ ohm: ohmAt20C, uncertaintyOhm },
+		{ ohm: modelled, uncertaintyOhm: modelled * modelUncertainty(model, [turns], 'single') }
+	);
+	if (!verdict.ok) return 'spec-refused';
+	if (verdict.value.agreement === 'open' || verdict.value.agreement === 'short') return 'open-or-short';
+	const coil: KeptCoil = { turns: [turns], connection: 'single', ohmAt20C, uncertaintyOhm, meterOhm };
+	const alone = calibrate(model, [coil]);
+	if (alone.ok) return coil;
+	if (alone.field.endsWith('.ohmAt20C')) return 'too-far';
+	return alone.field.startsWith('kept') ? 'too-unsure' : 'spec-refused';
+}
+
+/** The bobbin of the coil and the spec's are one as far as a core can be measured. */
+function sameFigures({ bobbin }: SpecContent, { bobbin: other }: KeptReading): boolean {
+	const near = (a: number, b: number) => Math.abs(a - b) <= figuresApartMax * Math.max(a, b);
+	return (
+		near(bobbin.straightM, other.straightM) &&
+		near(bobbin.endDiameterM, other.endDiameterM) &&
+		near(bobbin.traverseM, other.traverseM)
+	);
+}
+
+function fittedPacking(content: SpecContent, model: Model, kept: readonly KeptReading[]): KeptSay['packing'] {
+	const fits: { value: number; own: number }[] = [];
+	for (const reading of kept) {
+		if (reading.outerWidthM === null || !sameFigures(content, reading)) continue;
+		const fit = packingFromWidth(
+			{ ...model, turns: reading.turns, temperatureC: usualTemperatureC },
+			reading.outerWidthM
+		);
+		if (!fit.ok) continue;
+		const depthM = (reading.outerWidthM - model.bobbin.endDiameterM) / 2;
+		// Packing goes as one over the depth, and the width holds the depth twice.
+		fits.push({ value: fit.value, own: (fit.value * reading.outerWidthHalfWidthM) / 2 / depthM });
+	}
+	const n = fits.length;
+	if (n === 0) return null;
+	const value = fits.reduce((sum, fit) => sum + fit.value, 0) / n;
+	const own = fits.reduce((sum, fit) => sum + fit.own, 0) / n;
+	const variance = n > 1 ? fits.reduce((sum, fit) => sum + (fit.value - value) ** 2, 0) / (n - 1) : 0;
+	// The half-width whose rectangle spreads like the coils do (JCGM 100, 4.3.7); one caliper's error does not average out.
+	const halfWidth = Math.max(packingHalfWidthMin, Math.hypot(Math.sqrt(3 * variance), own));
+	return { value, halfWidth: Math.min(halfWidth, specLimits.packingHalfWidth[1]), coils: n };
+}
+
+function fittedPermeability(content: SpecContent, model: Model, kept: readonly KeptReading[]): KeptSay['permeability'] {
+	const least = content.cores.key === 'air' ? 0 : ironPermeabilityMin;
+	const fits: number[] = [];
+	for (const reading of kept) {
+		if (reading.inductanceH === null || !sameFigures(content, reading)) continue;
+		const wound = windCoil({ ...model, turns: reading.turns, temperatureC: usualTemperatureC });
+		if (!wound.ok) continue;
+		const { straightM, endDiameterM, traverseM } = model.bobbin;
+		const window = { straightM, endDiameterM, traverseM, windingDepthM: wound.value.windingDepthM };
+		const air = airInductanceH(window, reading.turns);
+		const fit = air.ok ? permeabilityFrom(reading.inductanceH, air.value) : air;
+		if (fit.ok && fit.value >= least) fits.push(fit.value);
+	}
+	return fits.length > 0 ? { value: fits.reduce((sum, fit) => sum + fit, 0) / fits.length, coils: fits.length } : null;
+}
