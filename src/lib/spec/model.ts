@@ -30,9 +30,15 @@ export interface Asked {
 	wire?: SpecWire | null;
 }
 
+/**
+ * Relative half-width of a self-capacitance found with two added capacitors: what peaks read to one in a hundred leave of
+ * it. No source.
+ */
+export const coilCapacitanceMeasuredPart = 0.1;
+
 /** The coil every coil of this spec is: bobbin, wire, packing, and how far each may be off. */
 export function specModel(content: SpecContent, spoolWire: SpecWire | null = null): CoilModel {
-	const { bobbin, packing, cores } = content;
+	const { bobbin, packing, cores, load } = content;
 	const wire = spoolWire ?? content.wire;
 	const halfWidths: Partial<HalfWidths> = {
 		diameterM: diameterToleranceM(wire.diameterM),
@@ -42,6 +48,7 @@ export function specModel(content: SpecContent, spoolWire: SpecWire | null = nul
 	if (wire.overallMinM !== null && wire.overallMaxM !== null && wire.overallMaxM > wire.overallMinM) {
 		halfWidths.overallDiameterM = Math.min((wire.overallMaxM - wire.overallMinM) / 2, wire.overallDiameterM / 3);
 	}
+	if (load.coilF !== null) halfWidths.coilCapacitancePart = coilCapacitanceMeasuredPart;
 	if (cores.measured) halfWidths.permeabilityPart = inductanceClaims.calibrated;
 	return {
 		bobbin: {
