@@ -190,15 +190,15 @@ const half = (of: string, show: FieldWords['show']): FieldWords => ({
 });
 
 const fields: Readonly<Record<string, FieldWords>> = {
-	'bobbin.straightM': { name: "The core's straight length", show: asLength, advice: `0 is a round core. ${lengthOf}` },
-	'bobbin.endDiameterM': { name: "The core's width", show: asLength, advice: lengthOf },
+	'bobbin.straightM': { name: 'The core’s straight length', show: asLength, advice: `0 is a round core. ${lengthOf}` },
+	'bobbin.endDiameterM': { name: 'The core’s width', show: asLength, advice: lengthOf },
 	'bobbin.traverseM': {
 		name: 'The traverse',
 		show: asLength,
 		advice: 'It is what the guide stops leave between the flanges.'
 	},
 	'bobbin.flangeOuterM': {
-		name: "The flange's width",
+		name: 'The flange’s width',
 		show: asLength,
 		advice: 'It is measured over all and cannot be less than the core; leave it empty where there is no flange.'
 	},
@@ -238,7 +238,7 @@ const fields: Readonly<Record<string, FieldWords>> = {
 	'load.toneCapF': { name: 'The tone capacitor', show: asFarad, advice: 'Usual is 22 nF.' },
 	'load.tone': { name: 'The tone control', show: asPart, advice: 'It turns from 0 to 10.' },
 	'load.cableF': {
-		name: "The cable's capacitance",
+		name: 'The cable’s capacitance',
 		show: asFarad,
 		advice: 'Check the length and the capacitance per metre.'
 	},
@@ -258,11 +258,11 @@ const fields: Readonly<Record<string, FieldWords>> = {
 	'halfWidths.airPart': half('the evenness of the turns', asPart),
 	'halfWidths.permeabilityPart': half('the cores', asPart),
 	'halfWidths.coilCapacitancePart': half('the self-capacitance', asPart),
-	'halfWidths.lossesDb': half("the peak's height", asDecibels),
+	'halfWidths.lossesDb': half('the peak’s height', asDecibels),
 	'kept.length': {
 		name: 'The number of kept coils',
 		show: asFigure,
-		advice: 'With none, the figures are the model's own.'
+		advice: 'With none, the figures are the model’s own.'
 	},
 	'kept.turns': { name: 'The turns of a kept coil', show: asTurns, advice: 'Correct them in the bench book.' },
 	'kept.ohmAt20C': {
@@ -271,12 +271,12 @@ const fields: Readonly<Record<string, FieldWords>> = {
 		advice: 'A coil so far off is open, shorted, or of another wire or bobbin: leave its reading out.'
 	},
 	'kept.uncertaintyOhm': {
-		name: 'The ± of a kept coil's reading',
+		name: 'The ± of a kept coil’s reading',
 		show: asOhm,
 		advice: 'Check the meter it was read with.'
 	},
 	'kept.meterOhm': {
-		name: 'The meter's part of a kept coil's ±',
+		name: 'The meter’s part of a kept coil’s ±',
 		show: asOhm,
 		advice: 'Check the meter it was read with.'
 	},
@@ -296,7 +296,7 @@ const fields: Readonly<Record<string, FieldWords>> = {
 		advice: 'There is no more room than that above the core.'
 	},
 	copperKg: { name: 'The wire left', show: asMass, advice: lengthOf },
-	perimeterM: { name: "The core's length around", show: asLength, advice: lengthOf },
+	perimeterM: { name: 'The core’s length around', show: asLength, advice: lengthOf },
 	measuredOuterWidthM: {
 		name: 'The measured outer width',
 		show: asLength,
@@ -305,7 +305,7 @@ const fields: Readonly<Record<string, FieldWords>> = {
 	measuredH: {
 		name: 'The measured inductance',
 		show: (si) => shownValue(si, 'inductance', si >= 0.1 ? 'henry' : 'millihenry', 3),
-		advice: 'Check the meter's range and that the coil is not open or shorted.'
+		advice: 'Check the meter’s range and that the coil is not open or shorted.'
 	},
 	ohm: { name: 'The reading', show: asOhm, advice: 'Check the number and its unit: Ω or kΩ.' },
 	temperatureHalfWidthC: {
@@ -314,16 +314,16 @@ const fields: Readonly<Record<string, FieldWords>> = {
 		advice: '2 °C either way is usual in a room.'
 	},
 	'meter.percent': {
-		name: 'The meter's per cent',
+		name: 'The meter’s per cent',
 		show: (si) => `${asFigure(si)} %`,
-		advice: 'It stands in the meter's manual.'
+		advice: 'It stands in the meter’s manual.'
 	},
-	'meter.counts': { name: 'The meter's counts', show: asFigure, advice: 'They stand in the meter's manual.' },
+	'meter.counts': { name: 'The meter’s counts', show: asFigure, advice: 'They stand in the meter’s manual.' },
 	'meter.ohmPerCount': { name: 'One count of the meter', show: asOhm, advice: 'It is one step of the last digit.' },
-	'expected.ohm': { name: 'What is expected', show: asOhm, advice: 'Check the spec's figures.' },
-	'expected.uncertaintyOhm': { name: 'The ± of what is expected', show: asOhm, advice: 'Check the spec's figures.' },
+	'expected.ohm': { name: 'What is expected', show: asOhm, advice: 'Check the spec’s figures.' },
+	'expected.uncertaintyOhm': { name: 'The ± of what is expected', show: asOhm, advice: 'Check the spec’s figures.' },
 	'reading.ohm': { name: 'The reading', show: asOhm, advice: 'Check the number and its unit: Ω or kΩ.' },
-	'reading.uncertaintyOhm': { name: 'The ± of the reading', show: asOhm, advice: 'Check the meter's figures.' },
+	'reading.uncertaintyOhm': { name: 'The ± of the reading', show: asOhm, advice: 'Check the meter’s figures.' },
 	inductanceH: { name: 'The inductance', show: (si) => shownValue(si, 'inductance', 'henry', 3), advice: lengthOf },
 	'large.hz': {
 		name: 'The peak with the larger capacitor',
@@ -340,7 +340,7 @@ const fields: Readonly<Record<string, FieldWords>> = {
 	coilF: { name: 'The self-capacitance that follows', show: asFarad, advice: 'Measure both peaks again.' }
 };
 
-/** Parts of the computation name what they were given: the last word is the field, the coil's number is set apart. */
+/** Parts of the computation name what they were given: the last word is the field, the coil’s number is set apart. */
 function wordsOf(field: string): FieldWords {
 	const plain = field.replace(/\[\d+\]/g, '').replace(/\.turns\.length$/, '.turns');
 	const found = fields[plain] ?? fields[`bobbin.${plain}`];
