@@ -62,3 +62,19 @@ export function typedDay(text: string): string | null {
 	const date = new Date(Date.UTC(Number(year), Number(month) - 1, Number(day)));
 	return date.toISOString().startsWith(found[0]) ? found[0] : null;
 }
+
+/** More of a refused value would not fit beside the reason. */
+const shownCharactersMax = 40;
+
+/** What to say of a refused value, with the value as it stands in the field. */
+export function keptAsTyped(typed: string): string {
+	const shown = typed.trim();
+	return shown === '' ? 'nothing was typed.' : `${quoted(shown)} was kept as typed.`;
+}
+
+/** A typed value in quotation marks, cut where it is long. */
+export function quoted(typed: string): string {
+	const shown = typed.trim();
+	const cut = lengthOf(shown) > shownCharactersMax;
+	return `“${[...shown].slice(0, shownCharactersMax).join('')}${cut ? '…' : ''}”`;
+}

@@ -1,19 +1,10 @@
 import { z } from 'zod';
 import { wholeText } from '../format.ts';
-import { lengthOf, typedLine, typedWhole } from '../typed-values.ts';
+import { keptAsTyped, lengthOf, typedLine, typedWhole } from '../typed-values.ts';
+
+export { keptAsTyped };
 
 /** Forms of text fields: values or sentences out. Nothing typed is lost on the way. */
-
-/** More of a refused value would not fit beside the reason. */
-const shownCharactersMax = 40;
-
-/** What to say of a refused value, with the value as it stands in the field. */
-export function keptAsTyped(typed: string): string {
-	const shown = typed.trim();
-	if (shown === '') return 'nothing was typed.';
-	const cut = lengthOf(shown) > shownCharactersMax;
-	return `“${[...shown].slice(0, shownCharactersMax).join('')}${cut ? '…' : ''}” was kept as typed.`;
-}
 
 /**
  * A whole number between two bounds, typed generously.
