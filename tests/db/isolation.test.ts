@@ -1,12 +1,17 @@
 import { createHash, randomUUID } from 'node:crypto';
 import { sql, type Kysely, type Transaction } from 'kysely';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
+import { usualUnits } from '../../src/lib/coil/units.ts';
 import { inWorkshop } from '../../src/lib/server/db/connect.ts';
 import type { Database } from '../../src/lib/server/db/schema.ts';
+import { startingSpec } from '../../src/lib/spec/start.ts';
 import { freshDatabase } from './harness.ts';
 
 /** Tables that belong to no workshop: the record of migrations, which the program may read and nothing else. */
 const exempt = ['kysely_migration', 'kysely_migration_lock'];
+
+/** Tables the program deletes nothing from, its own rows included: what is no more is marked, and stays to be read. */
+const neverDeleted = ['workshop', 'spec', 'spec_revision', 'spool', 'meter', 'reading'];
 
 const ROW_REFUSED = '42501'; // insufficient_privilege: what a policy or a missing grant raises
 const KEY_REFUSED = '23503'; // foreign_key_violation
@@ -66,13 +71,9 @@ const hashOf = (text: string) => createHash('sha256').update(text).digest();
 /** A workshop with at least one row in every table. */
 async function sow(owner: Kysely<Database>, shortName: string): Promise<Shop> {
 	const workshop_id = randomUUID();
-	const [memberId, removedId, winderId, coilId, runId] = Array.from({ length: 5 }, () => randomUUID()) as [
-		string,
-		string,
-		string,
-		string,
-		string
-	];
+	const ids = Array.from({ length: 8 }, () => randomUUID());
+	const [memberId = '', removedId = '', winderId = '', coilId = '', runId = '', specId = '', spoolId = ''] = ids;
+	const meterId = ids[7]!;
 	const shop: Shop = {
 		id: workshop_id,
 		email: `ada@${shortName}.example`,
@@ -95,7 +96,15 @@ async function sow(owner: Kysely<Database>, shortName: string): Promise<Shop> {
 	await owner
 		.insertInto('member')
 		.values([
-			{ workshop_id, id: memberId, email: shop.email, name: 'Ada Quill', role: 'owner', password_hash: 'hash' },
+			{
+				workshop_id,
+				id: memberId,
+				email: shop.email,
+				name: 'Ada Quill',
+				role: 'owner',
+				password_hash: 'hash',
+				units: JSON.stringify(usualUnits)
+			},
 			{
 				workshop_id,
 				id: removedId,
@@ -123,7 +132,48 @@ async function sow(owner: Kysely<Database>, shortName: string): Promise<Shop> {
 			{ workshop_id, name: 'w-02', link_key_hash: shop.removedLinkKeyHash, removed_at: at }
 		])
 		.execute();
-	const plan = { target: 5320, look_every: 500, direction: 'counter-clockwise' as const };
+	await owner.insertInto('spec').values({ workshop_id, id: specId, created_by: memberId }).execute();
+	const content = startingSpec('two-coils', 'Evening bridge');
+	await owner
+		.insertInto('spec_revision')
+		.values(
+			// Nothing refers to the second.
+			[1, 2].map((no) => ({
+				workshop_id,
+				spec_id: specId,
+				no,
+				name: content.name,
+				content: JSON.stringify(content),
+				created_by: memberId
+			}))
+		)
+		.execute();
+	await owner
+		.insertInto('spool')
+		.values({
+			workshop_id,
+			id: spoolId,
+			name: 'Red reel',
+			wire: JSON.stringify(content.wire),
+			created_by: memberId
+		})
+		.execute();
+	const range = { upToOhm: 20_000, percent: 0.5, counts: 2, ohmPerCount: 10 };
+	await owner
+		.insertInto('meter')
+		.values({ workshop_id, id: meterId, name: 'Yellow meter', ranges: JSON.stringify([range]) })
+		.execute();
+	const plan = {
+		target: 5320,
+		look_every: 500,
+		direction: 'counter-clockwise' as const,
+		spec_id: specId,
+		spec_revision_no: 1,
+		spec_coil: 0,
+		spool_id: spoolId,
+		first_look: 100,
+		full_turns: 6200
+	};
 	await owner
 		.insertInto('coil')
 		.values({ workshop_id, id: coilId, name: 'Bridge', ...plan, place: 1, winder_id: winderId, created_by: memberId })
@@ -145,6 +195,23 @@ async function sow(owner: Kysely<Database>, shortName: string): Promise<Shop> {
 		})
 		.execute();
 	await owner.updateTable('coil').set({ again_of_run: runId }).where('id', '=', coilId).execute();
+	await owner
+		.insertInto('reading')
+		.values({
+			workshop_id,
+			run_id: runId,
+			kind: 'resistance',
+			stage: 'wound',
+			value: 3700,
+			temperature_c: 21,
+			meter_id: meterId,
+			meter_name: 'Yellow meter',
+			meter_range: JSON.stringify(range),
+			taken_by: memberId,
+			struck_at: at,
+			struck_by: memberId
+		})
+		.execute();
 	await owner
 		.insertInto('run_trace')
 		.values({ workshop_id, run_id: runId, at_ms: [0], turns: [0], rpm: [0] })
@@ -296,8 +363,7 @@ describe.each(tables)('table $name', (table) => {
 		const attempt = asA((trx) =>
 			sql`delete from ${sql.table(table.name)} where ${sql.ref(table.key)} = ${b.id}`.execute(trx)
 		);
-		// The workshop itself cannot be deleted at all.
-		if (table.name === 'workshop') expect(await refusal(attempt)).toBe(ROW_REFUSED);
+		if (neverDeleted.includes(table.name)) expect(await refusal(attempt)).toBe(ROW_REFUSED);
 		else expect((await attempt).numAffectedRows).toBe(0n);
 		expect(await count(db.owner, table, b.id)).toBe(before);
 	});
@@ -311,18 +377,31 @@ describe('every foreign key', () => {
 	});
 
 	const within = foreignKeys.filter(({ target }) => target !== 'workshop');
-	it.each(within)('$name refers to no row of another workshop', async ({ table, columns, target, targetColumns }) => {
-		const [column, ...more] = columns.filter((name) => name !== 'workshop_id');
-		expect(more).toEqual([]);
-		const targetColumn = targetColumns[columns.indexOf(column!)]!;
-		const { rows } = await sql<{ id: string }>`
-			select ${sql.ref(targetColumn)} as id from ${sql.table(target)} where workshop_id = ${b.id} limit 1`.execute(db.owner);
-		const attempt = asA((trx) =>
-			sql`update ${sql.table(table)} set ${sql.ref(column!)} = ${rows[0]!.id}
-				where ctid = (select ctid from ${sql.table(table)} limit 1)`.execute(trx)
-		);
-		expect(await refusal(attempt)).toBe(KEY_REFUSED);
-	});
+	it.each(within)(
+		'$name refers to no row of another workshop',
+		async ({ table, name, columns, target, targetColumns }) => {
+			const pairs = columns
+				.map((column, i) => ({ column, target: targetColumns[i]! }))
+				.filter(({ column }) => column !== 'workshop_id');
+			expect(pairs.length).toBeGreaterThan(0);
+			const { rows } = await sql<Record<string, string | number>>`
+			select ${sql.join(pairs.map((pair) => sql.ref(pair.target)))} from ${sql.table(target)}
+			where workshop_id = ${b.id} limit 1`.execute(db.owner);
+			const there = rows[0]!;
+			const set = sql.join(pairs.map((pair) => sql`${sql.ref(pair.column)} = ${there[pair.target]}`));
+			// A row that others refer to would be refused for their sake; a second revision has none.
+			const unreferred = table === 'spec_revision' ? sql`where no = 2` : sql``;
+			const attempt = asA((trx) =>
+				sql`update ${sql.table(table)} set ${set}
+				where ctid = (select ctid from ${sql.table(table)} ${unreferred} limit 1)`.execute(trx)
+			);
+			const cause = await attempt.then(
+				() => null,
+				(error: { code?: string; constraint?: string }) => error
+			);
+			expect(cause).toMatchObject({ code: KEY_REFUSED, constraint: name });
+		}
+	);
 });
 
 describe('what is found before the workshop is known', () => {
