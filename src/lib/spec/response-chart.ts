@@ -6,6 +6,7 @@ import { ok, type Refused, type Result } from '../coil/refuse.ts';
 import { eNotes, findPeak, peakOf, responseDb, sweepHz, type Circuit } from '../coil/response.ts';
 import type { SpecContent, SpecWire } from './content.ts';
 import { specInput, type Dials } from './model.ts';
+import { plusMinus, plusMinusOf } from './words.ts';
 
 /**
  * How specs and measured coils ring into one load, as plain arrays a chart or a table can show. Hertz, decibels over the
@@ -305,16 +306,11 @@ const sixOrNone = (value: number | null): number | null => (value === null ? nul
 export const hertzText = (hz: number): string =>
 	hz < 999.5 ? `${Number(hz.toPrecision(3))} Hz` : `${(hz / 1000).toFixed(hz < 9995 ? 2 : 1)} kHz`;
 
-/** Decimals at which two digits of a half-width stand (JCGM 100, 7.2.6: two at most). */
-const decimals = (half: number): number =>
-	half > 0 ? Math.min(6, Math.max(0, 1 - Math.floor(Math.log10(Number(half.toPrecision(2)))))) : 2;
-
-/** "2.64 kHz ± 0.38", with the digits its half-width leaves it; without one three digits. */
+/** "2.6 kHz ± 0.4", with the digits its half-width leaves it; without one three digits. */
 export function peakHzText({ hz, hzHalf }: CurvePeak): string {
-	if (hzHalf === null) return hertzText(hz);
-	const [unit, by] = hz < 1000 ? ['Hz', 1] : ['kHz', 1000];
-	const places = decimals(hzHalf / by);
-	return `${(hz / by).toFixed(places)} ${unit} ± ${(hzHalf / by).toFixed(places)}`;
+	return hzHalf === null
+		? hertzText(hz)
+		: plusMinus(hz, hzHalf / coverage, 'frequency', hz < 1000 ? 'hertz' : 'kilohertz').text;
 }
 
 /** "+5.1 dB", "−6.2 dB", with a true minus sign. */
@@ -324,5 +320,9 @@ export function levelText(db: number, places = 1): string {
 	return `${sign}${digits} dB`;
 }
 
-export const peakDbText = ({ db, dbHalf }: CurvePeak): string =>
-	dbHalf === null ? levelText(db) : `${levelText(db)} ± ${dbHalf.toFixed(1)}`;
+/** "+5 dB ± 4". */
+export function peakDbText({ db, dbHalf }: CurvePeak): string {
+	if (dbHalf === null) return levelText(db);
+	const { text, number } = plusMinusOf(db, dbHalf / coverage, 'dB');
+	return db > 0 && /[1-9]/.test(number) ? `+${text}` : text;
+}

@@ -1,4 +1,4 @@
-import type { Chart, ChartData, Plugin } from 'chart.js';
+import type { ChartData, Plugin } from 'chart.js';
 import { eNotes } from '$lib/coil/response';
 import {
 	chartFromHz,
@@ -118,7 +118,7 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 	};
 
 	const log = { type: 'logarithmic' as const, min: chartFromHz, max: chartToHz };
-	const chart: Chart<'line', { x: number; y: number }[]> = new Chart(canvas, {
+	const chart = new Chart<'line', { x: number; y: number }[]>(canvas, {
 		type: 'line',
 		data: data(),
 		plugins: [span],
