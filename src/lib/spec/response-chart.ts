@@ -252,19 +252,21 @@ function bandOf(
 	return { leastDb, greatestDb };
 }
 
+/** Below this a volume control counts as turned off. */
+export const offDb = -100;
+
+export const isOff = (curve: Curve): boolean => curve.levelsDb.every((db) => db < offDb);
+
 /** Levels the chart shows: alike from look to look, so that a turned pot moves the curve and not the axis. */
 export function levelAxisDb(look: Look): { min: number; max: number } {
 	const top = Math.max(...look.curves.flatMap(({ levelsDb, band }) => [...levelsDb, ...(band?.greatestDb ?? [])]));
 	const max = Math.max(10, 5 * Math.ceil((top + 1) / 5));
 	// Of the lowest strings, where every pickup is flat.
 	const quietest = Math.min(...look.curves.map(({ levelsDb }) => levelsDb[0]!));
-	return { min: quietest < -80 ? -100 : quietest < -50 ? -80 : quietest < -25 ? -60 : -40, max };
+	// Turned off there is nothing to make room for.
+	const deep = quietest < -25 && quietest > offDb;
+	return { min: deep ? (quietest < -50 ? -80 : -60) : -40, max };
 }
-
-/** Below this a volume control counts as turned off. */
-export const offDb = -100;
-
-export const isOff = (curve: Curve): boolean => curve.levelsDb.every((db) => db < offDb);
 
 /** The same numbers as a sheet: one header, then peaks, notes and the whole sweep, each in its own columns. */
 export function sheetOf(look: Look): { header: string[]; rows: (string | number | null)[][] } {

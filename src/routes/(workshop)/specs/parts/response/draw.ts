@@ -48,13 +48,15 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 	const title = (text: string) => ({ display: true, text, font, color: ink });
 
 	/** What only frames the curve has no line in the legend and no words of its own. */
-	const edge = { borderWidth: 0, pointRadius: 0, pointHitRadius: 0, label: '' };
+	const axes = { xAxisID: 'hertz', yAxisID: 'level' };
+	const edge = { ...axes, borderWidth: 0, pointRadius: 0, pointHitRadius: 0, label: '' };
 	const dots = (levels: readonly number[]) => levels.map((y, i) => ({ x: look.hertz[i]!, y }));
 	const data = (): ChartData<'line', { x: number; y: number }[]> => {
 		const { band } = look.curves[0];
 		return {
 			datasets: [
 				...look.curves.map(({ name, levelsDb }, i) => ({
+					...axes,
 					label: name,
 					data: dots(levelsDb),
 					borderColor: token(lineLooks[i]!.token),
@@ -103,14 +105,14 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 			const edges = peak && peakSpanHz(peak);
 			if (!edges) return;
 			const lines = ['Peak, 19 in 20:', `${hertzText(edges.fromHz)} to`, hertzText(edges.toHz)];
-			const x = scales['hertz']!.getPixelForValue(Math.min(chartToHz, edges.toHz)) + 8;
 			ctx.save();
 			ctx.font = `14px ${font.family}`;
 			const width = Math.max(...lines.map((line) => ctx.measureText(line).width));
-			// Right of the band the curve has fallen away; where there is no room, left of it, below the curve.
-			const right = x + width < chartArea.right;
-			const from = right ? x : scales['hertz']!.getPixelForValue(edges.fromHz) - 8 - width;
-			const top = right ? chartArea.top + 18 : chartArea.bottom - 50;
+			const left = scales['hertz']!.getPixelForValue(edges.fromHz) - 8 - width;
+			const right = scales['hertz']!.getPixelForValue(edges.toHz) + 8;
+			// Low and left of the band nothing else stands: the curves are flat there, at the top.
+			const from = left > chartArea.left ? left : Math.min(right, chartArea.right - width);
+			const top = chartArea.bottom - 46;
 			ctx.fillStyle = copper;
 			lines.forEach((line, i) => ctx.fillText(line, from, top + 18 * i));
 			ctx.restore();
@@ -189,13 +191,11 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 			}
 		}
 	});
-	for (const set of chart.data.datasets) Object.assign(set, { xAxisID: 'hertz', yAxisID: 'level' });
-	chart.update('none');
 
 	return {
 		show(next) {
 			look = next;
-			chart.data.datasets = data().datasets.map((set) => ({ ...set, xAxisID: 'hertz', yAxisID: 'level' }));
+			chart.data.datasets = data().datasets;
 			Object.assign(chart.options.scales!['level']!, levelAxisDb(look));
 			chart.update('none');
 		},
