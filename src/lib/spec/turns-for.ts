@@ -1,14 +1,15 @@
-import type { Calibration } from '../coil/calibrate.ts';
+import { scaleAt, type Calibration } from '../coil/calibrate.ts';
 import { turnsMax } from '../coil/limits.ts';
 import { modelOhm } from '../coil/model.ts';
 import type { Connection } from '../coil/pickup.ts';
 import type { Prediction } from '../coil/predict.ts';
 import { ok, outside, type Result } from '../coil/refuse.ts';
 import { coilRefused, turnsForFullBobbin, windCoil, type CoilInput } from '../coil/winding.ts';
-import { scaleAt } from '../coil/calibrate.ts';
 import { copperKgPerM } from '../coil/wire.ts';
+import type { UnitPreference } from '../coil/units.ts';
 import type { SpecContent, SpecWire } from './content.ts';
 import { predictSpec, specModel, usualTemperatureC } from './model.ts';
+import { plusMinus } from './words.ts';
 
 /** The way back: turns for what is wanted. Two coils keep the difference they have in the spec. */
 
@@ -170,6 +171,37 @@ export function turnsMore(
 		depth: between(before.figures.windingDepthM, after.figures.windingDepthM),
 		hertz: before.peakHz && after.peakHz ? between(before.peakHz, after.peakHz) : null
 	});
+}
+
+/** "+0.33 kΩ ± 0.03, 0.20 mm ± 0.05 less room to the flange, peak 100 Hz ± 20 lower". */
+export function changeText({ ohm, depth, hertz }: Change, units: UnitPreference): string {
+	const said = [
+		signed(
+			plusMinus(
+				ohm.value,
+				ohm.uncertainty,
+				'resistance',
+				Math.abs(ohm.value) < 1000 && units.resistance === 'kilohm' ? 'ohm' : units.resistance
+			).text
+		),
+		`${plusMinus(Math.abs(depth.value), depth.uncertainty, 'length', units.length).text} ${depth.value < 0 ? 'more' : 'less'} room to the flange`
+	];
+	if (hertz) {
+		const shown = plusMinus(Math.abs(hertz.value), hertz.uncertainty, 'frequency', 'hertz').text;
+		said.push(`the peak ${shown} ${hertz.value < 0 ? 'lower' : 'higher'}`);
+	}
+	return said.join(', ');
+}
+
+const signed = (text: string): string => (/^[−0]/.test(text) && !/^0\.\d*[1-9]/.test(text) ? text : `+${text}`);
+
+/** "200", "-1,000", "−50 turns": a whole number of turns, less than none too; null where it is none. */
+export function typedChange(text: string): number | null {
+	const found = /^([-−–+]?)\s*(\d{1,3}(?:[ ,.']\d{3})+|\d{1,6})\s*(?:turns?)?$/i.exec(text.normalize('NFKC').trim());
+	if (!found) return null;
+	const size = Number(found[2]!.replace(/\D/g, ''));
+	if (size > turnsMax) return null;
+	return found[1] && found[1] !== '+' ? (size === 0 ? 0 : -size) : size;
 }
 
 /** Density of enamels, in kg/m³: about 1,300 (from memory; they lie close together). */

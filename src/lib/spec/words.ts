@@ -3,7 +3,7 @@ import { coverage } from '../coil/measurement.ts';
 import type { Contribution } from '../coil/predict.ts';
 import type { Refused } from '../coil/refuse.ts';
 import type { Part, Uncertain } from '../coil/uncertainty.ts';
-import { quantities, shownValue, type Quantity, type UnitOf, type UnitPreference } from '../coil/units.ts';
+import { quantities, shownValue, type Quantity, type Typed, type UnitOf, type UnitPreference } from '../coil/units.ts';
 
 /**
  * How figures and what is wrong with them are said. Every page that shows a figure with its ± takes it from here, so that
@@ -429,5 +429,18 @@ export function agreementWords(verdict: Verdict): AgreementWords {
 				sentence: 'Far too little for a coil: its leads touch, or the meter read its own leads.',
 				good: false
 			};
+	}
+}
+
+/** Why what was typed is no value of its quantity. */
+export function typedSentence(why: Extract<Typed, { ok: false }>['why'], typed: string): string {
+	const text = typed.trim();
+	switch (why) {
+		case 'number':
+			return text === '' ? 'Nothing was typed.' : `“${text}” is no number that can be read. It was kept as typed.`;
+		case 'unit':
+			return `“${text}” has a unit that does not belong here. It was kept as typed.`;
+		case 'two-meanings':
+			return `“${text}” can be read two ways: write the decimals with a point. It was kept as typed.`;
 	}
 }
