@@ -420,7 +420,7 @@ export function fillChosen(typed: SpecTyped, units: UnitPreference, base: SpecCo
 	const before = writeSpec(base, units);
 	const chose = (choice: SpecField, ...left: SpecField[]) =>
 		typed[choice] !== before[choice] && left.every((field) => typed[field] === before[field]);
-	let filled: SpecTyped = { ...typed, ...fillChosenWire(typed, units, base.wire) };
+	let filled: SpecTyped = fillChosenWire(typed, units, base.wire);
 	filled = fillKind(filled, base.coils.length === 2 ? 2 : 1);
 	if (chose('bobbinGeneric', 'bobbinStraight', 'bobbinEndDiameter', 'bobbinTraverse', 'bobbinFlange')) {
 		const name = typed.bobbinName === before.bobbinName ? {} : { bobbinName: typed.bobbinName };

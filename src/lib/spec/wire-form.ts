@@ -118,11 +118,11 @@ function ofTable({ wireSize, wireGrade, wireMaterial, wireBasis }: WireTyped): S
  * What choosing a size, a grade or a basis fills in: the table's figures. What was measured on a spool and the enamel's
  * material stay. Anything else chosen fills nothing.
  */
-export function fillWire(typed: WireTyped, units: UnitPreference): WireTyped {
+export function fillWire<Typed extends WireTyped>(typed: Typed, units: UnitPreference): Typed {
 	const table = ofTable(typed);
 	if (!table) return typed;
-	const filled = writeWire(table, units);
-	return { ...filled, wireBasis: typed.wireBasis, wireMaterial: typed.wireMaterial, wireOhmPerM: typed.wireOhmPerM };
+	const { wireBasis, wireMaterial, wireOhmPerM } = typed;
+	return { ...typed, ...writeWire(table, units), wireBasis, wireMaterial, wireOhmPerM };
 }
 
 const chosen = ['wireSize', 'wireGrade', 'wireBasis'] as const;
@@ -132,7 +132,7 @@ const figures = ['wireDiameter', 'wireOverall', 'wireOverallMin', 'wireOverallMa
  * For a form sent without scripts: where another size, grade or basis was chosen and the figures still are those of the
  * wire before, the table's are meant.
  */
-export function fillChosenWire(typed: WireTyped, units: UnitPreference, base: SpecWire): WireTyped {
+export function fillChosenWire<Typed extends WireTyped>(typed: Typed, units: UnitPreference, base: SpecWire): Typed {
 	const before = writeWire(base, units);
 	const other = chosen.some((field) => typed[field] !== before[field]);
 	const untouched = figures.every((field) => typed[field] === before[field]);
