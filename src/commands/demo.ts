@@ -3,10 +3,15 @@ import { hashPassword, verifyPassword } from '../lib/server/auth/passwords.ts';
 import { anyWorkshop, insertMemberWithPassword, insertWorkshop, passwordHashOf } from '../lib/server/db/admin.ts';
 import { addCoil, type CoilInput } from '../lib/server/db/coils.ts';
 import type { Db, Role } from '../lib/server/db/schema.ts';
+import { windSpec } from '../lib/server/db/specs.ts';
 import { addWinder, newLinkKey } from '../lib/server/db/winders.ts';
 import { readData, writeData } from './data-folder.ts';
+import { makeDemoRecord, type DemoPlace } from './demo-record.ts';
 
-/** An invented workshop for the first look at an empty database: three people, one simulated winder, three coils. */
+/**
+ * An invented workshop for the first look at an empty database: three people, one simulated winder, specs and what was
+ * wound by them, and a queue.
+ */
 
 const SIGN_INS = 'demo-sign-ins.txt';
 const WINDER = 'demo-winder.json';
@@ -17,20 +22,16 @@ const people: { name: string; email: string; role: Role }[] = [
 	{ name: 'Ira Moss', email: 'ira@demo.example', role: 'apprentice' }
 ];
 
-const common = {
-	note: '',
+// Short, so that whoever watches sees the looks and the end within minutes.
+const practice: CoilInput = {
+	name: 'Practice coil',
+	note: 'To see how the bench works.',
+	target: 1200,
 	lookEvery: 500,
 	direction: 'counter-clockwise',
 	topFaces: 'out',
 	toleranceTurns: 5
-} as const;
-
-// The first is short, so that whoever watches sees the looks and the end within minutes.
-const coils: CoilInput[] = [
-	{ ...common, name: 'Practice coil', target: 1200, note: 'To see how the bench works.' },
-	{ ...common, name: 'Bridge · screw coil', target: 5320 },
-	{ ...common, name: 'Bridge · slug coil', target: 5320, direction: 'clockwise' }
-];
+};
 
 export interface DemoWinder {
 	id: string;
@@ -96,12 +97,23 @@ export async function ensureDemo(db: Db): Promise<'made' | 'not-needed'> {
 		if (!added.ok) throw new Error('a new workshop has a winder already');
 		const linkKey = await newLinkKey(trx, workshopId, added.winder.id);
 		if (linkKey === null) throw new Error('the winder just added is not there');
-		for (const coil of coils) await addCoil(trx, workshopId, coil, { createdBy: memberIds[0] ?? null });
+		await fillDemo(trx, { workshopId, winderId: added.winder.id, memberId: memberIds[0]!, now: new Date() });
 		const winder: DemoWinder = { id: added.winder.id, name: added.winder.name, linkKey };
 		writeData(WINDER, `${JSON.stringify(winder)}\n`);
 		writeData(SIGN_INS, signIns.map((one) => `${one.role.padEnd(10)}  ${one.email}  ${one.password}\n`).join(''));
 	});
 	return 'made';
+}
+
+/** What was wound, and what waits: the practice coil first, then coils of the specs. */
+export async function fillDemo(trx: Parameters<typeof makeDemoRecord>[0], place: DemoPlace): Promise<void> {
+	const { workshopId, memberId: by } = place;
+	const { bridge, lantern } = await makeDemoRecord(trx, place);
+	await addCoil(trx, workshopId, practice, { createdBy: by });
+	for (const more of [{ ...bridge }, { ...lantern, no: 1 }]) {
+		const queued = await windSpec(trx, workshopId, { ...more, pickups: 1, by });
+		if (!queued.ok) throw new Error(`the demo's own spec is ${queued.why}`);
+	}
 }
 
 // Without what looks like another letter: these are typed from one screen into another.

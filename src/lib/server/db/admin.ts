@@ -1,5 +1,7 @@
 import { sql, type Kysely } from 'kysely';
+import type { FactKind, RunFigures } from '../../winding/types.ts';
 import { connect } from './connect.ts';
+import type { RunTrace } from './runs.ts';
 import type { Database, Role } from './schema.ts';
 
 /** What only the operator's commands do: they sign in as the owner, whom the policies do not bind. */
@@ -107,4 +109,107 @@ export async function passwordHashOf(db: Kysely<Database>, email: string): Promi
 /** Throws when the database does not answer. */
 export async function ping(db: Kysely<Database>): Promise<void> {
 	await sql`select 1`.execute(db);
+}
+
+/** A run that was wound and kept before this database stood. */
+export interface PastRun {
+	runId: string;
+	coilId: string;
+	winderId: string;
+	startedAt: Date;
+	endedAt: Date;
+	memberId: string;
+	figures: RunFigures;
+	trace: RunTrace;
+	/** In order, numbered on from `firstNo`. */
+	facts: {
+		kind: FactKind;
+		at: Date;
+		turns: number;
+		detail: Record<string, string | number | boolean | null>;
+		memberId: string | null;
+	}[];
+	firstNo: number;
+}
+
+/** Closes a run that was taken as kept, with its trace and what happened, as the recorder would have. */
+export async function keepPastRun(db: Kysely<Database>, workshopId: string, past: PastRun): Promise<void> {
+	const { runId, figures, trace } = past;
+	await db
+		.updateTable('run')
+		.set({
+			state: 'kept',
+			started_at: past.startedAt,
+			ended_at: past.endedAt,
+			ended_by: past.memberId,
+			turns: figures.turns,
+			on_bobbin: figures.onBobbin,
+			winding_ms: Math.round(figures.windingMs),
+			stopped_ms: Math.round(figures.stoppedMs),
+			rpm_mean: figures.rpmMean,
+			rpm_top: figures.rpmTop,
+			taken_back: figures.takenBack,
+			looks: JSON.stringify(figures.looks),
+			snaps: JSON.stringify(figures.snaps),
+			faults: JSON.stringify(figures.faults)
+		})
+		.where('workshop_id', '=', workshopId)
+		.where('id', '=', runId)
+		.execute();
+	await db
+		.updateTable('coil')
+		.set({ state: 'wound' })
+		.where('workshop_id', '=', workshopId)
+		.where('id', '=', past.coilId)
+		.execute();
+	await db
+		.insertInto('run_trace')
+		.values({ workshop_id: workshopId, run_id: runId, at_ms: trace.atMs, turns: trace.turns, rpm: trace.rpm })
+		.execute();
+	await db
+		.insertInto('fact')
+		.values(
+			past.facts.map((fact, i) => ({
+				workshop_id: workshopId,
+				winder_id: past.winderId,
+				no: past.firstNo + i,
+				run_id: runId,
+				kind: fact.kind,
+				at: fact.at,
+				turns: fact.turns,
+				detail: JSON.stringify(fact.detail),
+				member_id: fact.memberId
+			}))
+		)
+		.execute();
+}
+
+/** Says that a revision was written and used at other times than now. */
+export async function dateRevision(
+	db: Kysely<Database>,
+	workshopId: string,
+	specId: string,
+	no: number,
+	savedAt: Date,
+	usedAt: Date | null
+): Promise<void> {
+	await sql`
+		update spec_revision set created_at = ${savedAt}, saved_at = date_trunc('milliseconds', ${savedAt}::timestamptz),
+			used_at = ${usedAt}
+		where workshop_id = ${workshopId} and spec_id = ${specId} and no = ${no}`.execute(db);
+}
+
+/** Says that all readings of a run were taken at another time than now. */
+export async function dateReadings(
+	db: Kysely<Database>,
+	workshopId: string,
+	runId: string,
+	takenAt: Date
+): Promise<void> {
+	await db
+		.updateTable('reading')
+		.set({ taken_at: takenAt })
+		.where('workshop_id', '=', workshopId)
+		.where('run_id', '=', runId)
+		.execute();
 }
