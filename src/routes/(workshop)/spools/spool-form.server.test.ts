@@ -1,6 +1,5 @@
 import { describe, expect, it } from 'vitest';
 import { usualUnits } from '../../../lib/coil/units.ts';
-import { spoolLimits } from '../../../lib/server/db/spools.ts';
 import { tableWire } from '../../../lib/spec/start.ts';
 import { newSpool, parseSpoolForm, typedSpool, type SpoolTyped } from './spool-form.server.ts';
 
@@ -35,7 +34,7 @@ describe('a spool that is typed', () => {
 	});
 
 	it('names every field at fault at once, and gives all back as typed', () => {
-		const parsed = parse({ name: '', lot: 'x'.repeat(spoolLimits.lotMax + 1), wireOverall: 'thick' });
+		const parsed = parse({ name: '', lot: 'x'.repeat(81), wireOverall: 'thick' });
 		if (parsed.ok) throw new Error('taken');
 		expect(Object.keys(parsed.errors).sort()).toEqual(['lot', 'name', 'wireOverall']);
 		expect(parsed.typed).toMatchObject({ wireOverall: 'thick', wireSize: 'awg-42' });
