@@ -13,6 +13,7 @@ export const bookSorts = [
 	'winding',
 	'stopped',
 	'rpm',
+	'measured',
 	'who',
 	'state'
 ] as const;

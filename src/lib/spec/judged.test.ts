@@ -9,6 +9,7 @@ import {
 	permeabilityOf,
 	rangeOfReading,
 	readAt20C,
+	sideOf,
 	verdictOf,
 	type ResistanceRead
 } from './judged.ts';
@@ -106,6 +107,14 @@ describe('width and inductance of a wound coil', () => {
 			content.cores.effectivePermeability,
 			9
 		);
+	});
+
+	it('stand within, above or below the predicted one by the ± of both', () => {
+		// Twice the root of 3² + 4² is 10.
+		const predicted = { value: 100, uncertainty: 3 };
+		expect(sideOf(110, 4, predicted)).toEqual({ agreement: 'within', off: 10 });
+		expect(sideOf(110.1, 4, predicted).agreement).toBe('above');
+		expect(sideOf(89.9, 4, predicted).agreement).toBe('below');
 	});
 
 	it('are refused where nothing explains them', () => {

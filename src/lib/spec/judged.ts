@@ -2,7 +2,14 @@ import { expectedBand, judge, type Agreement, type Band, type Expected, type Ver
 import { scaleAt, scatterPrior, type Calibration } from '../coil/calibrate.ts';
 import { airInductanceH, permeabilityFrom } from '../coil/inductance.ts';
 import { to20C } from '../coil/wire.ts';
-import { meterHalfWidthOhm, readingTo20C, rectangular, type At20C, type MeterRange } from '../coil/measurement.ts';
+import {
+	coverage,
+	meterHalfWidthOhm,
+	readingTo20C,
+	rectangular,
+	type At20C,
+	type MeterRange
+} from '../coil/measurement.ts';
 import { atValues, halfWidthsRefused, modelOhm, windingInputs } from '../coil/model.ts';
 import type { Contribution } from '../coil/predict.ts';
 import { ok, type Result } from '../coil/refuse.ts';
@@ -144,4 +151,26 @@ export function permeabilityOf(
 	const { straightM, endDiameterM, traverseM } = model.bobbin;
 	const air = airInductanceH({ straightM, endDiameterM, traverseM, windingDepthM: wound.value.windingDepthM }, turns);
 	return air.ok ? permeabilityFrom(inductanceH, air.value) : air;
+}
+
+export interface Side {
+	agreement: Extract<Agreement, 'within' | 'above' | 'below'>;
+	/** Measured less predicted. */
+	off: number;
+}
+
+/**
+ * Where a measured width or inductance stands against the predicted one: their difference against the expanded uncertainty
+ * of both (JCGM 100, 5.1.2).
+ *
+ * @param uncertainty standard, of the measured value
+ */
+export function sideOf(
+	measured: number,
+	uncertainty: number,
+	predicted: Pick<Uncertain, 'value' | 'uncertainty'>
+): Side {
+	const off = measured - predicted.value;
+	const both = coverage * Math.hypot(uncertainty, predicted.uncertainty);
+	return { agreement: Math.abs(off) <= both ? 'within' : off > 0 ? 'above' : 'below', off };
 }

@@ -1,5 +1,7 @@
 import { sql, type Expression, type SqlBool, type Transaction } from 'kysely';
 import type { BookFilter, BookSort, BookState } from '../../book-filter.ts';
+import { copperAlphaPerK } from '../../coil/wire.ts';
+import type { ResistanceRead } from '../../spec/judged.ts';
 import type { Database } from './schema.ts';
 
 /** One line of the bench book: a run that is kept or set aside. */
@@ -23,6 +25,11 @@ export interface BookLine {
 	state: BookState;
 	reason: string | null;
 	note: string;
+	/** The spec's revision it was wound by; null: without one. */
+	spec: { id: string; no: number; name: string } | null;
+	spoolId: string | null;
+	/** The newest resistance that was not struck out; null: none was read. */
+	read: ResistanceRead | null;
 }
 
 export interface BookTotals {
@@ -53,6 +60,9 @@ const orders = {
 	winding: sql`run.winding_ms`,
 	stopped: sql`run.stopped_ms`,
 	rpm: sql`run.rpm_mean`,
+	// Brought to 20 °C by the law of `to20C`; an open coil reads more than any other.
+	measured: sql`case when newest.stage is not null then coalesce(
+		newest.value / (1 + ${sql.lit(copperAlphaPerK)}::double precision * (newest.temperature_c - 20)), 'infinity') end`,
 	who: sql`lower(member.name)`,
 	state: sql`run.state || coalesce(run.set_aside_reason, '')`
 } as const satisfies Record<BookSort, unknown>;
@@ -67,7 +77,39 @@ export async function listBook(
 ): Promise<BookLine[]> {
 	const direction = page.descending ? 'desc' : 'asc';
 	const rows = await closedRuns(trx, workshopId, timeZone, filter)
+		.leftJoinLateral(
+			(eb) =>
+				eb
+					.selectFrom('reading')
+					.select([
+						'reading.value',
+						'reading.temperature_c',
+						'reading.temperature_half_width_c',
+						'reading.meter_range',
+						'reading.half_width',
+						'reading.stage'
+					])
+					.whereRef('reading.workshop_id', '=', 'run.workshop_id')
+					.whereRef('reading.run_id', '=', 'run.id')
+					.where('reading.kind', '=', 'resistance')
+					.where('reading.struck_at', 'is', null)
+					.orderBy('reading.taken_at', 'desc')
+					.orderBy('reading.id')
+					.limit(1)
+					.as('newest'),
+			(join) => join.onTrue()
+		)
 		.select([
+			'run.spec_id',
+			'run.spec_revision_no',
+			'spec_revision.name as spec_name',
+			'run.spool_id',
+			'newest.value',
+			'newest.temperature_c',
+			'newest.temperature_half_width_c',
+			'newest.meter_range',
+			'newest.half_width',
+			'newest.stage as reading_stage',
 			'run.id',
 			'run.ended_at',
 			'run.coil_name',
@@ -108,7 +150,22 @@ export async function listBook(
 		who: row.member_name,
 		state: row.state as BookState,
 		reason: row.set_aside_reason,
-		note: row.note
+		note: row.note,
+		spec:
+			row.spec_id !== null && row.spec_revision_no !== null
+				? { id: row.spec_id, no: row.spec_revision_no, name: row.spec_name ?? '' }
+				: null,
+		spoolId: row.spool_id,
+		read:
+			row.reading_stage === null
+				? null
+				: {
+						ohm: row.value,
+						temperatureC: row.temperature_c ?? 20,
+						temperatureHalfWidthC: row.temperature_half_width_c ?? 0,
+						range: row.meter_range,
+						halfWidthOhm: row.half_width
+					}
 	}));
 }
 
@@ -171,6 +228,12 @@ function closedRuns(trx: Trx, workshopId: string, timeZone: string, filter: Book
 		.leftJoin('member', (join) =>
 			join.onRef('member.workshop_id', '=', 'run.workshop_id').onRef('member.id', '=', 'run.ended_by')
 		)
+		.leftJoin('spec_revision', (join) =>
+			join
+				.onRef('spec_revision.workshop_id', '=', 'run.workshop_id')
+				.onRef('spec_revision.spec_id', '=', 'run.spec_id')
+				.onRef('spec_revision.no', '=', 'run.spec_revision_no')
+		)
 		.where('run.workshop_id', '=', workshopId)
 		.where('run.state', '<>', 'open');
 	if (filter.state) query = query.where('run.state', '=', filter.state);
@@ -205,5 +268,5 @@ function clampTurns(value: number): number {
 /** Plain containment, so that % and _ are characters like any other. A line end parts the columns: nobody types one. */
 function holdsText(text: string): Expression<SqlBool> {
 	return sql<SqlBool>`strpos(
-		lower(concat_ws(E'\n', run.coil_name, run.sticker, run.note, run.set_aside_reason)), lower(${text})) > 0`;
+		lower(concat_ws(E'\n', run.coil_name, run.sticker, run.note, run.set_aside_reason, spec_revision.name)), lower(${text})) > 0`;
 }

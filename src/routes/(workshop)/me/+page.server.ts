@@ -4,7 +4,10 @@ import { waitInWords } from '$lib/server/auth/attempts';
 import { guard } from '$lib/server/auth/guard';
 import { hashPassword, passwordRefusals, refusePassword } from '$lib/server/auth/passwords';
 import { confirmPassword, dropSession, openSession } from '$lib/server/auth/session';
+import { unitPreference } from '$lib/coil/units';
+import { inWorkshop } from '$lib/server/db/connect';
 import { changeName, setPassword, signOutEverywhere } from '$lib/server/db/people';
+import { setUnits } from '$lib/server/db/units';
 import { readName } from '../workshop/people/person-form';
 
 export const actions: Actions = {
@@ -15,6 +18,16 @@ export const actions: Actions = {
 		if (!name.ok) return fail(400, { name: typed, nameReason: name.reason });
 		await changeName(locals.db, member.workshopId, member.id, name.value);
 		return { done: 'Your name is changed.' };
+	},
+
+	units: async ({ locals, request }) => {
+		const member = guard(locals, 'me.change');
+		const chosen = unitPreference.safeParse(Object.fromEntries(await request.formData()));
+		if (!chosen.success) {
+			return fail(400, { unitsReason: 'Choose one of the units offered for each. Your units are as they were.' });
+		}
+		await inWorkshop(locals.db, member.workshopId, (trx) => setUnits(trx, member.workshopId, member.id, chosen.data));
+		return { done: 'Your units are changed, here and on every page.' };
 	},
 
 	password: async (event) => {
