@@ -1,6 +1,6 @@
 import { turnsMax } from '../coil/limits.ts';
 import { ok, type Result } from '../coil/refuse.ts';
-import { shownNumber, shownValue, type UnitPreference } from '../coil/units.ts';
+import { shownValue, type UnitPreference } from '../coil/units.ts';
 import { windCoil, type Bobbin, type Coil } from '../coil/winding.ts';
 import { metresPerInch } from '../coil/wire.ts';
 import type { SpecContent, SpecWire } from './content.ts';
@@ -83,7 +83,7 @@ const deepestWithoutFlangeM = 0.015;
 const wirePxMin = 5;
 const wiresMax = 200;
 /** Around the drawing, in pixels: the handle's hit area, and figures at the section's left. */
-const planEdgePx = 6;
+const planEdgePx = 12;
 const sectionLeftPx = 72;
 const sectionRightPx = 26;
 const sectionHeightMaxPx = 220;
@@ -263,17 +263,24 @@ export function turnsAfterKey(
 	}
 }
 
-const lengthText = (m: number, units: UnitPreference) => shownValue(m, 'length', units.length, 3);
-/** Hundredths of a millimetre, or thousandths of an inch: more would not be to be seen. */
-const roomText = (m: number, units: UnitPreference) => {
-	const places = units.length === 'inch' ? 3 : 2;
-	const own = units.length === 'inch' ? m / metresPerInch : m * 1000;
-	return `${decimalText(own, places)} ${units.length === 'inch' ? 'in' : 'mm'}`;
-};
+/** As it is typed: figures of the spec. */
+const typedText = (m: number, units: UnitPreference) => shownValue(m, 'length', units.length, 4);
+
+const placed = (m: number, units: UnitPreference, placesMm: number, placesInch: number) =>
+	units.length === 'inch'
+		? { number: decimalText(m / metresPerInch, placesInch), unit: 'in' }
+		: { number: decimalText(m * 1000, placesMm), unit: 'mm' };
+const withUnit = ({ number, unit }: { number: string; unit: string }) => `${number} ${unit}`;
+
+/** Hundredths of a millimetre, or thousandths of an inch: less cannot be seen. */
+const roomText = (m: number, units: UnitPreference) => withUnit(placed(m, units, 2, 3));
+
+/** "5.0 mm". */
+export const depthText = (m: number, units: UnitPreference): string => withUnit(placed(m, units, 1, 2));
 
 /** "67.0 × 16.2 mm". */
 export const sizeText = (lengthM: number, widthM: number, units: UnitPreference): string =>
-	`${shownNumber(lengthM, 'length', units.length, 3)} × ${lengthText(widthM, units)}`;
+	`${placed(lengthM, units, 1, 2).number} × ${depthText(widthM, units)}`;
 
 /** How the coil fits its flange, as a plain sentence with the reason. */
 export function fitSentence({ coil, fit }: Pick<CoilDrawing, 'coil' | 'fit'>, units: UnitPreference): string {
@@ -302,9 +309,9 @@ export function pictureText(
 	units: UnitPreference
 ): { plan: string; section: string } {
 	const { straightM, endDiameterM, traverseM, flangeOuterM } = content.bobbin;
-	const flange = flangeOuterM === null ? '' : `, flange ${lengthText(flangeOuterM, units)} wide`;
+	const flange = flangeOuterM === null ? '' : `, flange ${typedText(flangeOuterM, units)} wide`;
 	return {
 		plan: `${name} to scale, seen from above: core ${sizeText(straightM + endDiameterM, endDiameterM, units)}, copper ${sizeText(coil.outerLengthM, coil.outerWidthM, units)} over all${flange}.`,
-		section: `${name} to scale, cut across: core ${lengthText(endDiameterM, units)} wide, traverse ${lengthText(traverseM, units)}, winding depth ${lengthText(coil.windingDepthM, units)} on each side${flange}.`
+		section: `${name} to scale, cut across: core ${typedText(endDiameterM, units)} wide, traverse ${typedText(traverseM, units)}, winding depth ${depthText(coil.windingDepthM, units)} on each side${flange}.`
 	};
 }

@@ -177,7 +177,9 @@ export function figureRows(
 	const against = (now: string, before: string | undefined): string | null =>
 		before === undefined || before === now ? null : `Without your kept coils: ${before}.`;
 
-	const ohm = (value: number, uncertainty: number) => plusMinus(value, uncertainty, 'resistance', units.resistance);
+	// Whoever counts in kilohms still reads some hundred ohms as such.
+	const ohmUnit = Math.min(...coils.map((coil) => coil.resistanceOhm)) < 1000 ? 'ohm' : units.resistance;
+	const ohm = (value: number, uncertainty: number) => plusMinus(value, uncertainty, 'resistance', ohmUnit);
 	const length = (figure: { value: number; uncertainty: number }) =>
 		plusMinus(figure.value, figure.uncertainty, 'length', units.length);
 
@@ -325,7 +327,10 @@ export function figureRows(
 		)
 	);
 
-	const henry = (figure: Uncertain<Contribution>) => plusMinus(figure.value, figure.uncertainty, 'inductance', 'henry');
+	const henry = (figure: Uncertain<Contribution>) => {
+		const unit = figure.value >= 0.1 ? 'henry' : figure.value >= 1e-4 ? 'millihenry' : 'microhenry';
+		return plusMinus(figure.value, figure.uncertainty, 'inductance', unit);
+	};
 	const iron = content.cores.effectivePermeability !== 1;
 	rows.push(
 		ofFigure(
@@ -358,23 +363,35 @@ export function figureRows(
 		...(load.tonePotOhm === null ? [] : [`${shownValue(load.tonePotOhm, 'resistance', 'kilohm', 3)} tone`]),
 		`${shownValue(cableF, 'capacitance', 'picofarad', 3)} cable`
 	].join(', ');
-	const explainsPeak =
-		'Where the pickup rings loudest into these pots and this cable, and how far above the string’s own level: higher is brighter.';
 	const { peakHz, peakDb } = prediction;
-	rows.push(
-		peakHz && peakDb
-			? row('peak', 'Peak into this load', {
-					value: `${spanText(peakHz.value, peakHz.uncertainty, 'frequency', peakHz.value >= 1000 ? 'kilohertz' : 'hertz')}, ${decibelSpanText(peakDb.value, peakDb.uncertainty)}`,
-					remark: pots,
-					shares: shares(peakHz.parts),
-					explains: `${explainsPeak} It is a range: 19 of 20 such pickups lie in it.`
-				})
-			: row('peak', 'Peak into this load', {
-					value: 'none',
-					remark: pots,
-					explains: `${explainsPeak} Into this load it falls off without one.`
-				})
-	);
+	const explainsPeak =
+		'Where the pickup rings loudest into these pots and this cable: higher is brighter, lower is darker';
+	if (peakHz && peakDb) {
+		const unit = peakHz.value >= 1000 ? 'kilohertz' : 'hertz';
+		rows.push(
+			row('peak', 'Peak into this load', {
+				value: spanText(peakHz.value, peakHz.uncertainty, 'frequency', unit),
+				remark: pots,
+				shares: shares(peakHz.parts),
+				explains: `${explainsPeak}; 19 of 20 such pickups lie in this range.`
+			}),
+			row('peak-height', 'Height of the peak', {
+				value: decibelSpanText(peakDb.value, peakDb.uncertainty),
+				remark: mostWords(peakDb),
+				shares: shares(peakDb.parts),
+				explains:
+					'How far the peak stands above the string’s own level, as a range: the higher, the more it rings; covers and lower pots flatten it.'
+			})
+		);
+	} else {
+		rows.push(
+			row('peak', 'Peak into this load', {
+				value: 'none',
+				remark: pots,
+				explains: `${explainsPeak}; into this load it falls off without one.`
+			})
+		);
+	}
 
 	const tension = tensionN((wire ?? content.wire).diameterM);
 	const forceUnit = units.mass === 'ounce' ? 'poundForce' : 'gramForce';
@@ -394,7 +411,12 @@ export function figureRows(
 	rows.push(
 		row('leads', 'Leads', {
 			value: leads > 0 ? shownValue(leads, 'resistance', 'ohm', 2) : 'none given',
-			remark: leads === 0 ? '' : part < nothingPart ? 'nothing a meter shows' : `${decimalText(100 * part, 1)} % more`,
+			remark:
+				leads === 0
+					? ''
+					: part < nothingPart
+						? 'nothing a meter shows'
+						: `${decimalText(100 * part, part < 0.1 ? 1 : 0)} % more`,
 			explains:
 				'What the pickup’s own leads add, there and back, reckoned as 28 AWG, the thinnest in use; it is not in the resistance above.'
 		})

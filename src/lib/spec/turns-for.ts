@@ -190,7 +190,8 @@ export function changeText({ ohm, depth, hertz }: Change, units: UnitPreference)
 		const shown = plusMinus(Math.abs(hertz.value), hertz.uncertainty, 'frequency', 'hertz').text;
 		said.push(`the peak ${shown} ${hertz.value < 0 ? 'lower' : 'higher'}`);
 	}
-	return said.join(', ');
+	// A figure does not leave its unit at the end of a line.
+	return said.map((text) => text.replace(/(?<=[\d±]) (?=[±\dΩkmiH])/g, '\u00a0')).join(', ');
 }
 
 const signed = (text: string): string => (/^[−0]/.test(text) && !/^0\.\d*[1-9]/.test(text) ? text : `+${text}`);

@@ -151,7 +151,8 @@ export const mostWords = (figure: Pick<Uncertain<Contribution>, 'parts'>): strin
 		.join(', ');
 
 /** "91 %"; a small one is not said to be none. */
-export const shareText = (share: number): string => (share < 0.01 ? 'under 1 %' : `${Math.round(100 * share)} %`);
+export const shareText = (share: number): string =>
+	share < 0.01 ? 'under 1\u00a0%' : `${Math.round(100 * share)}\u00a0%`;
 
 interface FieldWords {
 	/** Starts the sentence. */
@@ -367,7 +368,8 @@ export function refusedSentence(refused: Refused, units: UnitPreference): string
 		return 'This bobbin has no flange to fill up to. Give the width of its flange first.';
 	}
 	const subject = `${name}${coilOf(field)}`;
-	const came = got === null ? 'there is no number' : `it is ${show(got, units)}`;
+	const is = /^The (?:turns|meter’s counts)/.test(name) ? 'they are' : 'it is';
+	const came = got === null ? 'there is no number' : `${is} ${show(got, units)}`;
 	const range =
 		max >= endless || (field === 'spacingM' && got !== null && got < min)
 			? `must be at least ${show(min, units)}`
