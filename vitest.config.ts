@@ -15,7 +15,7 @@ export default mergeConfig(
 					test: {
 						name: 'unit',
 						environment: 'node',
-						include: ['{src,simulator,firmware-protocol}/**/*.test.ts', 'tests/{rules,bench}/**/*.test.ts']
+						include: ['{src,simulator,firmware-protocol}/**/*.test.ts', 'tests/{rules,bench,serial}/**/*.test.ts']
 					}
 				},
 				{
@@ -26,6 +26,16 @@ export default mergeConfig(
 						environment: 'node',
 						include: ['tests/reference/**/*.test.ts'],
 						testTimeout: 60_000
+					}
+				},
+				{
+					extends: true,
+					test: {
+						// The C core, compiled and driven; needs gcc, clang and avr-gcc.
+						name: 'firmware',
+						environment: 'node',
+						include: ['tests/firmware/**/*.test.ts'],
+						globalSetup: ['tests/firmware/global-setup.ts']
 					}
 				},
 				{

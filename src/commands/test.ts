@@ -108,11 +108,12 @@ async function build(): Promise<Count> {
 	}
 }
 
-/** What the tests need from Debian: PostgreSQL, a browser, and the programs the computation is checked against. */
+/** What the tests need from Debian: PostgreSQL, a browser, cables without boards, and what the computation is checked against. */
 const packages: { name: string; there: () => boolean }[] = [
 	{ name: 'postgresql', there: () => existsSync('/usr/lib/postgresql') },
 	{ name: 'chromium', there: () => existsSync(CHROMIUM) },
 	{ name: 'units', there: () => existsSync('/usr/bin/units') },
+	{ name: 'socat', there: () => existsSync('/usr/bin/socat') },
 	{ name: 'ngspice', there: () => existsSync('/usr/bin/ngspice') },
 	{ name: 'python3-uncertainties', there: () => existsSync('/usr/lib/python3/dist-packages/uncertainties') }
 ];

@@ -52,6 +52,10 @@ describe('the reader of imports', () => {
 		['src/lib/serverless.ts', "import { b } from './server-words.ts';"],
 		['simulator/a.ts', "import '../src/lib/turnline/b.ts'; import '../src/lib/winding/b.ts'; import 'ws';"],
 		['firmware-protocol/bridge/a.ts', "import '../../src/lib/turnline/b.ts'; import 'node:fs';"],
+		['firmware-protocol/bridge/a.ts', "import '../../src/lib/serial/index.ts';"],
+		['firmware-protocol/bridge/main.ts', 'const key = process.env.KEY;'],
+		['src/lib/serial/a.ts', "import 'serialport'; import 'node:fs'; import '../turnline/b.ts';"],
+		['src/lib/server/ingest/a.ts', "import '../../serial/b.ts';"],
 		[
 			'src/lib/bench/a.ts',
 			"// import pg from 'pg' and process.env\nconst a = \"import 'kysely'\"; const env = import.meta.env.DEV;"
@@ -102,7 +106,11 @@ describe('the reader of imports', () => {
 		],
 		['simulator/a.ts', "import { b } from '../src/commands/b.ts';", /simulator imports/],
 		['simulator/a.test.ts', "import { b } from '../src/lib/server/b.ts';", /only server files/],
-		['firmware-protocol/bridge/a.ts', "import { b } from '../../src/lib/winding/b.ts';", /firmware-protocol imports/]
+		['firmware-protocol/bridge/a.ts', "import { b } from '../../src/lib/winding/b.ts';", /firmware-protocol imports/],
+		['src/lib/serial/a.ts', "import { b } from '../winding/b.ts';", /lib\/serial imports lib\/turnline/],
+		['src/lib/bench/a.ts', "import { b } from '../serial/b.ts';", /only server files and the bridge/],
+		['src/routes/+page.svelte', "{#await import('$lib/serial') then b}{b}{/await}", /only server files and the bridge/],
+		['firmware-protocol/bridge/a.ts', "import { SerialPort } from 'serialport';", /only src\/lib\/serial/]
 	];
 	it.each(planted)('finds what %s does wrong with %s', (path, text, says) => {
 		expect(rulesBroken({ path, text }).join('\n')).toMatch(says);

@@ -20,12 +20,18 @@ const pure: Record<string, string[]> = {
 	spec: ['coil', 'winding', 'typed-values.ts', 'format.ts']
 };
 /** What stands outside and speaks the line, and which libraries of `src` it may import. */
-const outside: Record<string, string[]> = { simulator: ['turnline', 'winding'], 'firmware-protocol': ['turnline'] };
+const outside: Record<string, string[]> = {
+	simulator: ['turnline', 'winding'],
+	'firmware-protocol': ['turnline', 'serial']
+};
+/** Needs Node and a device: for the server and the bridge, never for a page. It knows the line and nothing else of src. */
+const serialHome = 'src/lib/serial/';
+const serialPackage = 'serialport';
 const databasePackages = ['pg', 'kysely'];
 const databaseHomes = ['src/lib/server/db/', 'migrations/', 'tests/'];
 const environmentHome = 'src/lib/server/env.ts';
-/** The simulator is a program of its own that may not import the server's: it takes its link key here. */
-const environmentHomes = [environmentHome, 'simulator/main.ts'];
+/** The simulator and the bridge are programs of their own that may not import the server's: they take their link keys here. */
+const environmentHomes = [environmentHome, 'simulator/main.ts', 'firmware-protocol/bridge/main.ts'];
 
 /** One sentence for each rule broken, naming the file and what it imports; empty when it keeps them all. */
 export function rulesBroken({ path, text }: Source): string[] {
@@ -46,6 +52,11 @@ export function rulesBroken({ path, text }: Source): string[] {
 			broken.push(`${says}a pure library imports itself, ${[...pure[pureLib]!, 'zod'].join(' and ')}`);
 		// A type alone is erased: nothing of the server comes with it.
 		if (!typeOnly && goesTo('server') && !isServerFile(path)) broken.push(`${says}only server files import lib/server`);
+		if (under(serialHome) && !test && target?.startsWith('src/') && !goesTo('serial', 'turnline'))
+			broken.push(`${says}of src, lib/serial imports lib/turnline`);
+		if (packageName === serialPackage && !under(serialHome)) broken.push(`${says}only ${serialHome} knows it`);
+		if (!typeOnly && goesTo('serial') && !under(serialHome) && !outsider && !isServerFile(path))
+			broken.push(`${says}only server files and the bridge read serial ports`);
 		if (packageName && databasePackages.includes(packageName) && !under(...databaseHomes))
 			broken.push(`${says}only ${databaseHomes.join(', ')} know the database`);
 		if (outsider && target?.startsWith('src/') && !goesTo(...outside[outsider]!))
