@@ -217,6 +217,13 @@ describe('what some turns more do', () => {
 		);
 	});
 
+	it('speaks of depth where there is no flange', () => {
+		const content = two();
+		content.bobbin.flangeOuterM = null;
+		expect(changeText(value(turnsMore(content, content.wire, null, 200)), usualUnits)).toMatch(/deeper, the peak/);
+		expect(changeText(value(turnsMore(content, content.wire, null, -200)), usualUnits)).toMatch(/less deep, the peak/);
+	});
+
 	it('says nothing of a peak where there is none', () => {
 		const content = two();
 		content.load.volumePotOhm = 5000;

@@ -135,6 +135,8 @@ export interface Change {
 	ohm: { value: number; uncertainty: number };
 	/** Of the winding depth, which is what the flange loses. */
 	depth: { value: number; uncertainty: number };
+	/** There is a flange to lose room to. */
+	flange: boolean;
 	/** null where there is no peak before or after. */
 	hertz: { value: number; uncertainty: number } | null;
 }
@@ -169,12 +171,13 @@ export function turnsMore(
 		turns: more,
 		ohm: between(before.figures.resistanceOhm, after.figures.resistanceOhm),
 		depth: between(before.figures.windingDepthM, after.figures.windingDepthM),
+		flange: content.bobbin.flangeOuterM !== null,
 		hertz: before.peakHz && after.peakHz ? between(before.peakHz, after.peakHz) : null
 	});
 }
 
 /** "+0.33 kΩ ± 0.03, 0.20 mm ± 0.05 less room to the flange, peak 100 Hz ± 20 lower". */
-export function changeText({ ohm, depth, hertz }: Change, units: UnitPreference): string {
+export function changeText({ ohm, depth, flange, hertz }: Change, units: UnitPreference): string {
 	const said = [
 		signed(
 			plusMinus(
@@ -184,7 +187,9 @@ export function changeText({ ohm, depth, hertz }: Change, units: UnitPreference)
 				Math.abs(ohm.value) < 1000 && units.resistance === 'kilohm' ? 'ohm' : units.resistance
 			).text
 		),
-		`${plusMinus(Math.abs(depth.value), depth.uncertainty, 'length', units.length).text} ${depth.value < 0 ? 'more' : 'less'} room to the flange`
+		`${plusMinus(Math.abs(depth.value), depth.uncertainty, 'length', units.length).text} ${
+			flange ? `${depth.value < 0 ? 'more' : 'less'} room to the flange` : depth.value < 0 ? 'less deep' : 'deeper'
+		}`
 	];
 	if (hertz) {
 		const shown = plusMinus(Math.abs(hertz.value), hertz.uncertainty, 'frequency', 'hertz').text;
