@@ -1,7 +1,7 @@
 import { randomUUID } from 'node:crypto';
 import { sql, type Transaction } from 'kysely';
 import { afterAll, beforeAll, beforeEach, describe, expect, it } from 'vitest';
-import { addCoil, coilLimits, findCoil, listWaiting, takeNextCoil } from '../../src/lib/server/db/coils.ts';
+import { addCoil, coilLimits, editCoil, findCoil, listWaiting, takeNextCoil } from '../../src/lib/server/db/coils.ts';
 import { inWorkshop } from '../../src/lib/server/db/connect.ts';
 import { findRun, setRunSpool } from '../../src/lib/server/db/runs.ts';
 import type { Database } from '../../src/lib/server/db/schema.ts';
@@ -369,6 +369,17 @@ describe('winding by a spec', () => {
 		});
 		const coil = await here((trx) => findCoil(trx, shop.id, run!.coilId));
 		expect(coil).toMatchObject({ state: 'on-bench', spec: run!.spec });
+	});
+
+	it('leaves a coil its tolerance and its spec when the queue changes how many turns it gets', async () => {
+		const specId = await add();
+		const wound = await wind(specId, 1);
+		if (!wound.ok) throw new Error(wound.why);
+		const slug = wound.coils[1]!;
+		const { name, note, lookEvery, direction, topFaces } = slug;
+		const changed = { name, note, lookEvery, direction, topFaces, target: 4800 };
+		expect(await here((trx) => editCoil(trx, shop.id, slug.id, changed))).toBe('waiting');
+		expect(await here((trx) => findCoil(trx, shop.id, slug.id))).toEqual({ ...slug, target: 4800 });
 	});
 
 	it('leaves a coil queued by hand without any of it', async () => {

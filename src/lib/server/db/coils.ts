@@ -122,7 +122,8 @@ export async function addCoil(
 		.insertInto('coil')
 		.values((eb) => ({
 			workshop_id: workshopId,
-			...columns(coil),
+			...plannedColumns(coil),
+			tolerance_turns: coil.toleranceTurns,
 			created_by: more.createdBy,
 			again_of_run: more.againOfRun ?? null,
 			spec_id: more.spec?.id ?? null,
@@ -142,19 +143,19 @@ export async function addCoil(
 }
 
 /**
- * Changes a coil that waits or is on a bench; what is wound stays as it was. Afterwards tell `ingest.planChanged` when
- * the answer is `on-bench`, and `ingest.queueChanged` otherwise.
+ * Changes a coil that waits or is on a bench; what is wound stays as it was, and so do its tolerance and what it has from a
+ * spec. Afterwards tell `ingest.planChanged` when the answer is `on-bench`, and `ingest.queueChanged` otherwise.
  */
 export async function editCoil(
 	trx: Trx,
 	workshopId: string,
 	coilId: string,
-	coil: CoilInput
+	coil: Omit<CoilInput, 'toleranceTurns'>
 ): Promise<'waiting' | 'on-bench' | 'not-found'> {
 	if (!isUuid(coilId)) return 'not-found';
 	const row = await trx
 		.updateTable('coil')
-		.set(columns(coil))
+		.set(plannedColumns(coil))
 		.where('workshop_id', '=', workshopId)
 		.where('id', '=', coilId)
 		.where('state', 'in', ['waiting', 'on-bench'])
@@ -349,15 +350,14 @@ async function freeSticker(trx: Trx, workshopId: string): Promise<string> {
 	}
 }
 
-function columns(coil: CoilInput) {
+function plannedColumns(coil: Omit<CoilInput, 'toleranceTurns'>) {
 	return {
 		name: coil.name,
 		note: coil.note,
 		target: coil.target,
 		look_every: coil.lookEvery,
 		direction: coil.direction,
-		top_faces: coil.topFaces,
-		tolerance_turns: coil.toleranceTurns
+		top_faces: coil.topFaces
 	};
 }
 
