@@ -114,10 +114,10 @@ describe('two revisions', () => {
 		if (!before.ok || !after.ok) throw new Error('refused');
 		const difference = after.value.figures.resistanceOhm.value - before.value.figures.resistanceOhm.value;
 		expect(figure(turns!.effect, 'resistanceOhm').difference).toMatch(
-			new RegExp(`^\\+${(difference / 1000).toFixed(3)} kΩ \\(\\+2\\.\\d+ %\\)$`)
+			new RegExp(`^\\+${(difference / 1000).toFixed(3)} kΩ \\(\\+2\\.\\d %\\)$`)
 		);
 		expect(figure(turns!.effect, 'coils.1.resistanceOhm').moved).toBe(false);
-		expect(figure(turns!.effect, 'peakHz').difference).toMatch(/^−0\.\d+ kHz \(−\d/);
+		expect(figure(turns!.effect, 'peakHz').difference).toMatch(/^−\d\d\.\d Hz \(−\d\.\d %\)$/);
 	});
 
 	it('say that words move nothing', () => {
@@ -146,14 +146,18 @@ describe('two revisions', () => {
 	it('judge a difference against what coils wound alike differ by', () => {
 		const by = (turns: number) =>
 			figure(compared(changed((content) => (content.coils[0]!.turns = turns))).together, 'resistanceOhm').besideScatter;
-		// Half a hundredth from coil to coil, so two differ by 1.4 % at most 19 times in 20; these turns add 0.3 and 3.5 %.
-		expect(by(5030)).toBe('within');
-		expect(by(5300)).toBe('more');
-		const length = figure(
-			compared(changed((content) => (content.coils[0]!.turns = 5300))).together,
-			'lengthM'
-		).besideScatter;
-		expect(length).toBeNull();
+		// Half a hundredth from coil to coil (the model's own, without kept coils): two differ by 2·√2·0.5 %, 0.11 of 7.5 kΩ.
+		expect(by(5030)).toEqual({ alike: '0.11 kΩ', more: false });
+		expect(by(5300)).toEqual({ alike: '0.11 kΩ', more: true });
+		const more = compared(changed((content) => (content.coils[0]!.turns = 5300))).together;
+		expect(figure(more, 'lengthM').besideScatter).toBeNull();
+		expect(figure(more, 'coilF').besideScatter).toBeNull();
+	});
+
+	it('tell a difference too small for any instrument from one that shows, and from none', () => {
+		const tiny = compared(changed((content) => (content.bobbin.straightM *= 1 + 1e-5))).together;
+		expect(figure(tiny, 'resistanceOhm')).toMatchObject({ difference: 'under 0.01 %', moved: false });
+		expect(figure(tiny, 'copperFill')).toMatchObject({ difference: 'none', moved: false });
 	});
 
 	it('name the field at fault where a change alone makes no sense', () => {

@@ -306,8 +306,12 @@ export function specFields(
 	}));
 }
 
-/** How a difference stands to what coils wound alike differ by themselves; null: nothing is known of that. */
-export type BesideScatter = 'more' | 'within' | null;
+/** How a difference stands to what two coils wound alike differ by of themselves; null: nothing is known of that. */
+export interface BesideScatter {
+	/** What they differ by at most, 19 times in 20: "0.10 kΩ". */
+	alike: string;
+	more: boolean;
+}
 
 export interface FigureDifference {
 	key: string;
@@ -315,10 +319,11 @@ export interface FigureDifference {
 	/** With ±, 19 in 20; "none" where there is no such figure. */
 	a: string;
 	b: string;
-	/** "+0.31 kΩ (+4.1 %)", "none", or "cannot be told" where only one of the two has it. */
+	/** "+0.31 kΩ (+4.1 %)", "none", "under 0.01 %", or "cannot be told" where only one of the two has it. */
 	difference: string;
+	/** By so much that it shows. */
 	moved: boolean;
-	besideScatter: BesideScatter;
+	besideScatter: BesideScatter | null;
 }
 
 export type Effect = { ok: true; figures: FigureDifference[] } | { ok: false; refused: Refused };
@@ -393,10 +398,13 @@ const scatterOf = (figure: Uncertain<Contribution>): number =>
 const told = (figure: Uncertain<Contribution> | null): Told | null =>
 	figure && { value: figure.value, uncertainty: figure.uncertainty, scatter: scatterOf(figure) };
 
-/** Changes smaller than this part of a figure are rounding. */
+/** Changes smaller than this part of a figure are rounding… */
 const roundingPart = 1e-7;
-/** And of decibels, which may be near zero: what the search for a peak leaves. */
+/** …and no instrument of a workshop shows less than this. */
+const shownPart = 1e-4;
+/** Of decibels, which may be near zero: what the search for a peak leaves, and what can be seen. */
 const roundingDb = 1e-4;
+const shownDb = 0.01;
 
 function differences(
 	a: Side,
@@ -411,21 +419,23 @@ function differences(
 		label: string,
 		of: (prediction: Prediction) => Told | null,
 		quantity: Q,
-		unit: UnitOf<Q>
+		unit: UnitOf<Q>,
+		/** `fineUnit`: of the difference; `parts` false: a part of it would say nothing. */
+		{ fineUnit = unit, parts = true }: { fineUnit?: UnitOf<Q>; parts?: boolean } = {}
 	) => {
-		const { toSi, fromSi, symbol } = (
-			quantities[quantity] as Record<string, { symbol: string; toSi(n: number): number; fromSi(n: number): number }>
-		)[unit]!;
+		// All units of these figures are multiples: a difference is turned like a value.
+		const { fromSi, symbol } = (quantities[quantity] as Record<string, { symbol: string; fromSi(si: number): number }>)[
+			fineUnit
+		]!;
 		const [one, other] = [of(before), of(after)];
 		// Neither has it: a second coil where there is none.
 		if (!one && !other) return;
 		const text = (figure: Told | null) =>
 			figure ? plusMinus(figure.value, figure.uncertainty, quantity, unit).text : 'none';
 		const change = one && other ? other.value - one.value : null;
-		const moved = change === null || Math.abs(change) > roundingPart * Math.abs(one!.value);
-		// All units of these figures are multiples: a difference is turned like a value.
-		const by = change === null ? 0 : fromSi(change) - fromSi(toSi(0));
-		const part = change === null || one!.value === 0 ? null : change / one!.value;
+		const size = change === null ? 0 : Math.abs(change / one!.value);
+		const moved = change === null || size > shownPart;
+		const whole = change === null ? '' : `${signed(fromSi(change), 3)} ${symbol}`;
 		rows.push({
 			key,
 			label,
@@ -434,11 +444,15 @@ function differences(
 			difference:
 				change === null
 					? 'cannot be told'
-					: moved
-						? `${signed(by)} ${symbol}${part === null ? '' : ` (${signed(100 * part)} %)`}`
-						: 'none',
+					: size <= roundingPart
+						? 'none'
+						: !moved
+							? 'under 0.01 %'
+							: parts
+								? `${whole} (${signed((100 * change) / one!.value, 2)} %)`
+								: whole,
 			moved,
-			besideScatter: beside(one, other, moved)
+			besideScatter: moved ? beside(one, other, (si) => `${signed(fromSi(si), 2).slice(1)} ${symbol}`) : null
 		});
 	};
 	const coils = Math.max(before.coils.length, after.coils.length);
@@ -476,46 +490,57 @@ function differences(
 		add(`coils.${i}.outerLengthM`, ofEach('Outer length', i), sized('outerLengthM', 2), 'length', length);
 		add(`coils.${i}.outerWidthM`, ofEach('Outer width', i), sized('outerWidthM', 2), 'length', length);
 		add(`coils.${i}.windingDepthM`, ofEach('Winding depth', i), sized('windingDepthM', 1), 'length', length);
-		add(`coils.${i}.roomM`, ofEach('Room to the flange', i), room, 'length', length);
+		add(`coils.${i}.roomM`, ofEach('Room to the flange', i), room, 'length', length, { parts: false });
 		add(`coils.${i}.meanTurnM`, ofEach('Mean turn', i), sized('meanTurnM', Math.PI), 'length', length);
 	}
-	add('copperFill', 'Copper fill', (p) => told(p.figures.copperFill), 'part', 'percent');
+	add('copperFill', 'Copper fill', (p) => told(p.figures.copperFill), 'part', 'percent', { parts: false });
 	add('airInductanceH', 'Inductance without iron', (p) => told(p.figures.airInductanceH), 'inductance', 'henry');
 	add('inductanceH', 'Inductance', (p) => told(p.figures.inductanceH), 'inductance', 'henry');
 	const coilF = ({ coilF: farad }: Prediction): Told | null =>
 		farad === null ? null : { value: farad, uncertainty: 0, scatter: 0 };
 	add('coilF', 'Self-capacitance', coilF, 'capacitance', 'picofarad');
-	add('peakHz', 'Peak', (p) => told(p.peakHz), 'frequency', 'kilohertz');
+	add('peakHz', 'Peak', (p) => told(p.peakHz), 'frequency', 'kilohertz', { fineUnit: 'hertz' });
 
 	const [one, other] = [told(before.peakDb), told(after.peakDb)];
-	const level = (figure: Told | null) => (figure ? plusMinusOf(figure.value, figure.uncertainty, 'dB').text : 'none');
-	const change = one && other ? other.value - one.value : null;
+	const level = (figure: Told | null) => {
+		if (!figure) return 'none';
+		const { text, number } = plusMinusOf(figure.value, figure.uncertainty, 'dB');
+		return figure.value > 0 && /[1-9]/.test(number) ? `+${text}` : text;
+	};
 	if (one || other) {
-		const moved = change === null || Math.abs(change) > roundingDb;
+		const change = one && other ? other.value - one.value : null;
+		const size = Math.abs(change ?? Infinity);
 		rows.push({
 			key: 'peakDb',
 			label: 'Height of the peak',
 			a: level(one),
 			b: level(other),
-			difference: change === null ? 'cannot be told' : moved ? `${signed(change)} dB` : 'none',
-			moved,
-			besideScatter: beside(one, other, moved)
+			difference:
+				change === null
+					? 'cannot be told'
+					: size <= roundingDb
+						? 'none'
+						: size < shownDb
+							? 'under 0.01 dB'
+							: `${signed(change, 2)} dB`,
+			moved: size >= shownDb,
+			// Most of what makes one peak taller than the next are losses, of which nobody knows how they scatter.
+			besideScatter: null
 		});
 	}
 	return rows;
 }
 
 /** Two coils wound alike differ by the scatter of both (JCGM 100, 5.1.2), 19 times in 20 by less than `coverage` times it. */
-function beside(one: Told | null, other: Told | null, moved: boolean): BesideScatter {
-	if (!one || !other || !moved) return null;
+function beside(one: Told | null, other: Told | null, said: (si: number) => string): BesideScatter | null {
+	if (!one || !other) return null;
 	const alike = coverage * Math.hypot(one.scatter, other.scatter);
-	return alike === 0 ? null : Math.abs(other.value - one.value) > alike ? 'more' : 'within';
+	return alike === 0 ? null : { alike: said(alike), more: Math.abs(other.value - one.value) > alike };
 }
 
-/** Three digits, with a sign: a difference is worth no more. */
-function signed(value: number): string {
-	const places = value === 0 ? 0 : Math.max(0, Math.min(9, 2 - Math.floor(Math.log10(Math.abs(value)))));
+/** So many digits, with a sign: a difference is worth no more. */
+function signed(value: number, digits: number): string {
+	const places = value === 0 ? 0 : Math.max(0, Math.min(9, digits - 1 - Math.floor(Math.log10(Math.abs(value)))));
 	const text = decimalText(value, places);
-	const plain = text.includes('.') ? text.replace(/\.?0+$/, '') : text;
-	return value > 0 ? `+${plain}` : plain;
+	return value > 0 ? `+${text}` : text;
 }
