@@ -42,6 +42,7 @@ export const load: PageServerLoad = async ({ locals, params, cookies }) => {
 	if (!found) error(404, nothing);
 	const { run, facts, trace, coil, measured, meters } = found;
 	const last = cookies.get(meterCookie);
+	const stage = measured.readings.find(({ kind, struckAt }) => kind === 'resistance' && struckAt === null)?.stage;
 	const meter = meters.find(({ id }) => id === last) ?? (last === noMeter ? null : meters[0]);
 	const view = run.state === 'open' ? await turnstead().ingest.view(workshopId, run.winderId) : null;
 	// The bench keeps one run; another open one of the same winder waits behind it.
@@ -59,7 +60,7 @@ export const load: PageServerLoad = async ({ locals, params, cookies }) => {
 		measured,
 		meters: meters.map(({ id, name }) => ({ id, name })),
 		// What is read next is most often read where the coil stood last.
-		blank: blankReading(units, randomUUID(), meter?.id ?? noMeter, measured.readings[0]?.stage),
+		blank: blankReading(units, randomUUID(), meter?.id ?? noMeter, stage),
 		run,
 		coilNote: coil?.note ?? '',
 		again: coil?.againOfRun ?? null,
