@@ -17,16 +17,6 @@ import {
 	type Share
 } from './words.ts';
 
-export {
-	agreementWords,
-	contributionWords,
-	plusMinus,
-	refusedSentence,
-	shareText,
-	type AgreementWords,
-	type PlusMinus
-} from './words.ts';
-
 /** A prediction as rows of a table: what a maker reads before any wire is spent. */
 export interface FigureRow {
 	key: string;
