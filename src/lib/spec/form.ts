@@ -88,8 +88,39 @@ export type SpecErrors = Partial<Record<SpecField, string>>;
 
 const coilFieldsOf = (no: 1 | 2): CoilField[] => coilParts.map((part): CoilField => `coil${no}${part}`);
 
-/** Every field, in the order of the form. */
-export const specFields: readonly SpecField[] = [...plainFields, ...wireFields, ...coilFieldsOf(1), ...coilFieldsOf(2)];
+const shownFirst = [
+	'name',
+	'kind',
+	'coilCount',
+	'coil1Turns',
+	'coil2Turns',
+	'wireSize',
+	'wireGrade',
+	'wireOverall',
+	'wireMaterial',
+	'spool',
+	'wireDiameter',
+	'wireBasis',
+	'wireOverallMin',
+	'wireOverallMax',
+	'wireOhmPerM',
+	'packingKey',
+	'packing',
+	'packingHalfWidth',
+	'packingMeasured',
+	'bobbinGeneric',
+	'bobbinName',
+	'bobbinStraight',
+	'bobbinEndDiameter',
+	'bobbinTraverse',
+	'bobbinFlange',
+	'guideStops'
+] as const satisfies SpecField[];
+
+/** Every field once, in the order in which the form shows them. */
+export const specFields: readonly SpecField[] = [
+	...new Set<SpecField>([...shownFirst, ...coilFieldsOf(1), ...coilFieldsOf(2), ...plainFields, ...wireFields])
+];
 
 /** The choice of what is in no list of ours. */
 export const own = 'own';

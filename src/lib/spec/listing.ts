@@ -105,7 +105,7 @@ const groups: readonly { title: string; fields: readonly SpecField[] }[] = [
 	},
 	{ title: 'Looks', fields: ['lookEvery', 'firstLook'] },
 	{
-		title: 'What it plays into',
+		title: 'Load',
 		fields: [
 			'volumePot',
 			'volumeTaper',
