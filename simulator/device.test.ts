@@ -410,6 +410,17 @@ describe('what a winder is told', () => {
 		]);
 	});
 
+	it('a plan overtaken by a newer one on the way sets nothing', () => {
+		const rig = newDevice();
+		const b = rig.device.boot;
+		rig.device.linkUp(0);
+		rig.say(plan(b, { id: 4_294_967_295 }));
+		rig.say(plan(b, { id: 2, tgt: 300 }));
+		rig.say(plan(b, { id: 1, tgt: 400 }));
+		expect(rig.device.plan?.cue.target).toBe(300);
+		expect(rig.lines()).toContainEqual({ verb: 'NO', b, id: 1, why: 'old' });
+	});
+
 	it('a plan for another boot sets nothing', () => {
 		const rig = newDevice();
 		rig.device.linkUp(0);

@@ -111,6 +111,7 @@ interface Boot {
 	plan: DevicePlan | null;
 	fired: { ease: boolean; at: boolean; over: boolean; look: number };
 	answers: { id: number; text: string }[];
+	newestSet: number | null;
 	acknowledgedAny: boolean;
 }
 
@@ -355,6 +356,7 @@ export class Device {
 			plan: null,
 			fired: { ease: false, at: false, over: false, look: 0 },
 			answers: [],
+			newestSet: null,
 			acknowledgedAny: false
 		};
 	}
@@ -501,13 +503,17 @@ export class Device {
 		const { plan, fired } = this.now;
 		if (!plan) return;
 		const turns = this.turns!;
-		const cues = cuesAt(plan.cue, turns, true);
+		let cues = cuesAt(plan.cue, turns, true);
+		// Nobody stood still for it: the maker winds on, and the next look is ahead.
+		while (cues.nextLook !== null && turns > cues.nextLook + lookPassedAfterTurns) {
+			plan.cue.lookDone = cues.nextLook;
+			cues = cuesAt(plan.cue, turns, true);
+		}
 		if (this.reached('ease', turns, cues.easeAt)) this.raise('ease', nowMs);
 		if (cues.cue === 'look' && cues.nextLook !== null && fired.look !== cues.nextLook) {
 			fired.look = cues.nextLook;
 			this.raise('look', nowMs);
 		}
-		if (cues.nextLook !== null && turns > cues.nextLook + lookPassedAfterTurns) plan.cue.lookDone = cues.nextLook;
 		if (plan.cue.lookDone > 0 && turns < plan.cue.lookDone - plan.cue.stopEarlyTurns - rearmTurns) {
 			plan.cue.lookDone = lookBehind(plan.cue, turns);
 			fired.look = 0;
@@ -544,7 +550,7 @@ export class Device {
 			case 'SYNC':
 				return this.synchronise(line.b, line.e);
 			case 'SET':
-				return this.once(line.id, line.b, () => this.adopt(line, nowMs));
+				return this.once(line.id, line.b, () => this.adopt(line, nowMs), this.now.newestSet);
 			case 'STOP':
 				return this.stop(line, nowMs);
 			case 'HOLD':
@@ -573,13 +579,16 @@ export class Device {
 	}
 
 	/** Acts on a command once, however often it comes, and answers each time. */
-	private once(id: number, b: string, act: () => 'range' | null): void {
+	private once(id: number, b: string, act: () => 'range' | null, newest: number | null = null): void {
 		if (b !== this.boot) return this.answer({ verb: 'NO', b: this.boot, id, why: 'boot' });
 		const known = this.now.answers.find((answer) => answer.id === id);
 		if (known) {
 			if (this.linked) this.urgent.push(known.text);
 			return;
 		}
+		// Numbers grow and may wrap: in the half of them behind the newest lies what was overtaken on the way.
+		const behind = newest === null ? 0 : (newest - id) >>> 0;
+		if (behind > 0 && behind <= 0x7fff_ffff) return this.answer({ verb: 'NO', b, id, why: 'old' });
 		const why = act();
 		const answer = why ? ({ verb: 'NO', b, id, why } as const) : ({ verb: 'OK', b, id } as const);
 		this.now.answers.push({ id, text: formatLine(answer) });
@@ -588,10 +597,11 @@ export class Device {
 	}
 
 	private adopt(set: SetPlan, nowMs: number): 'range' | null {
+		const boot = this.now;
+		boot.newestSet = set.id;
 		const from = set.from ?? 0;
 		const target = Math.abs(set.tgt - from);
 		if (target === 0 || target > turnsMax) return 'range';
-		const boot = this.now;
 		const before = boot.plan;
 		const sign = set.tgt > from ? 1 : -1;
 		const cue: CuePlan = {

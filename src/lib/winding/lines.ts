@@ -158,8 +158,16 @@ function takeAnswer(d: Draft, b: string, ok: boolean, id: number | undefined, wh
 		const lost = loseEvents(boot);
 		if (lost > 0) sayFault(d, 'event-lost', d.now, { events: lost });
 	}
-	if (d.s.set && id !== undefined && d.s.set.id === id && d.s.set.b === b) d.s.set = { ...d.s.set, answered: true };
+	if (!d.s.set || id === undefined || d.s.set.id !== id || d.s.set.b !== b) return;
+	if (!ok && why === 'old') {
+		// The winder heard greater numbers, from before an older backup was restored here: the plan goes again beyond them.
+		d.s.commandId += commandsSkipped;
+		d.s.set = null;
+	} else d.s.set = { ...d.s.set, answered: true };
 }
+
+/** Commands of some hours: few steps lead past whatever a restored backup forgot. */
+const commandsSkipped = 1_000;
 
 /** After its first pulse a winder knows no speed yet: a spindle whose count has just grown does not stand. */
 const speedUnknownMs = 1_000;

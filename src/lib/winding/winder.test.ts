@@ -847,6 +847,21 @@ describe('the plan told to the device', () => {
 		expect(bench.commands()[0]).toMatchObject({ verb: 'SET', tgt: 1300 });
 	});
 
+	it('goes under a number beyond those a winder heard before an older backup was restored', () => {
+		const bench = started();
+		const sent = () => bench.commands().find((line) => line.verb === 'SET') as { id: number } | undefined;
+		const first = sent()!;
+		bench.give({ verb: 'NO', b: bench.b, id: first.id, why: 'old' });
+		const second = sent()!;
+		expect(second).toMatchObject({ tgt: 1200 });
+		expect(second.id).toBeGreaterThan(first.id + 900);
+		// The answer to what was overtaken on the way says nothing about the plan that waits.
+		bench.give({ verb: 'NO', b: bench.b, id: first.id, why: 'old' });
+		expect(sent()).toEqual(second);
+		bench.give({ verb: 'OK', b: bench.b, id: second.id });
+		expect(sent()).toBeUndefined();
+	});
+
 	it('asks the device to speak while a tap waits for a line', () => {
 		const bench = started({}, { lookEvery: 0 });
 		bench.turn(1200);
