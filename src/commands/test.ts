@@ -108,14 +108,22 @@ async function build(): Promise<Count> {
 	}
 }
 
-/** What the tests need from Debian: PostgreSQL, a browser, cables without boards, and what the computation is checked against. */
+/** What the tests need from Debian: PostgreSQL, a browser, cables without boards, what the computation is checked against, compilers. */
 const packages: { name: string; there: () => boolean }[] = [
 	{ name: 'postgresql', there: () => existsSync('/usr/lib/postgresql') },
 	{ name: 'chromium', there: () => existsSync(CHROMIUM) },
 	{ name: 'units', there: () => existsSync('/usr/bin/units') },
 	{ name: 'socat', there: () => existsSync('/usr/bin/socat') },
 	{ name: 'ngspice', there: () => existsSync('/usr/bin/ngspice') },
-	{ name: 'python3-uncertainties', there: () => existsSync('/usr/lib/python3/dist-packages/uncertainties') }
+	{ name: 'python3-uncertainties', there: () => existsSync('/usr/lib/python3/dist-packages/uncertainties') },
+	// The C core is compiled for this machine at 64 and 32 bits, by two compilers, and for an 8-bit board.
+	{ name: 'gcc', there: () => existsSync('/usr/bin/gcc') },
+	{ name: 'libc6-dev', there: () => existsSync('/usr/include/stdlib.h') },
+	{ name: 'gcc-multilib', there: () => existsSync('/usr/share/doc/gcc-multilib') },
+	{ name: 'clang', there: () => existsSync('/usr/bin/clang') },
+	{ name: 'libclang-rt-dev', there: () => existsSync('/usr/share/doc/libclang-rt-dev') },
+	{ name: 'gcc-avr', there: () => existsSync('/usr/bin/avr-gcc') },
+	{ name: 'avr-libc', there: () => existsSync('/usr/lib/avr/include/avr/io.h') }
 ];
 
 async function ensurePackages(): Promise<void> {
@@ -153,8 +161,12 @@ async function main(soak: boolean): Promise<Count> {
 		name: soak ? 'Faults, many rounds' : 'Faults',
 		work: () => vitest('faults', reports, soak ? { ...env, SOAK: '1' } : env)
 	};
+	const firmware: Step = {
+		name: soak ? 'Firmware, long fuzz' : 'Firmware',
+		work: () => vitest('firmware', reports, soak ? { ...env, SOAK: '1' } : env)
+	};
 	const steps: Step[] = soak
-		? [{ name: 'Build', work: build }, faults]
+		? [firmware, { name: 'Build', work: build }, faults]
 		: [
 				{ name: 'Format', work: () => check(['prettier', '--check', '.']) },
 				{ name: 'Lint', work: () => check(['eslint', '.']) },
@@ -165,6 +177,7 @@ async function main(soak: boolean): Promise<Count> {
 				},
 				{ name: 'Unit tests', work: () => vitest('unit', reports, env) },
 				{ name: 'Reference programs', work: () => vitest('reference', reports, env) },
+				firmware,
 				{ name: 'Database tests', work: () => vitest('database', reports, env) },
 				{ name: 'Build', work: build },
 				faults,
