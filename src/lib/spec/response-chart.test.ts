@@ -239,12 +239,12 @@ describe('figures in words', () => {
 	});
 
 	it('a peak has the digits its uncertainty leaves it, and three where none is known', () => {
-		const peak = { hz: 2637, hzHalf: 383, db: 5.06, dbHalf: 3.51 };
-		expect(peakHzText(peak)).toBe('2.6 kHz ± 0.4');
+		const peak = { hz: 2637, hzHalf: 520, db: 5.06, dbHalf: 4.6 };
+		expect(peakHzText(peak)).toBe('2.6 kHz ± 0.5');
 		expect(peakHzText({ ...peak, hzHalf: 120 })).toBe('2.64 kHz ± 0.12');
 		expect(peakHzText({ ...peak, hz: 812, hzHalf: 41 })).toBe('810 Hz ± 40');
 		expect(peakHzText({ ...peak, hzHalf: null })).toBe('2.64 kHz');
-		expect(peakDbText(peak)).toBe('+5 dB ± 4');
+		expect(peakDbText(peak)).toBe('+5 dB ± 5');
 		expect(peakDbText({ ...peak, db: -0.04, dbHalf: null })).toBe('0.0 dB');
 		expect(levelText(-21.44)).toBe('−21.4 dB');
 	});

@@ -308,7 +308,7 @@ const sixOrNone = (value: number | null): number | null => (value === null ? nul
 export const hertzText = (hz: number): string =>
 	hz < 999.5 ? `${Number(hz.toPrecision(3))} Hz` : `${(hz / 1000).toFixed(hz < 9995 ? 2 : 1)} kHz`;
 
-/** "2.6 kHz ± 0.4", with the digits its half-width leaves it; without one three digits. */
+/** "2.6 kHz ± 0.5", with the digits its half-width leaves it; without one three digits. */
 export function peakHzText({ hz, hzHalf }: CurvePeak): string {
 	return hzHalf === null
 		? hertzText(hz)
@@ -322,7 +322,7 @@ export function levelText(db: number, places = 1): string {
 	return `${sign}${digits} dB`;
 }
 
-/** "+5 dB ± 4". */
+/** "+5 dB ± 5". */
 export function peakDbText({ db, dbHalf }: CurvePeak): string {
 	if (dbHalf === null) return levelText(db);
 	const { text, number } = plusMinusOf(db, dbHalf / coverage, 'dB');
