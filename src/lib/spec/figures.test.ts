@@ -58,8 +58,8 @@ describe('the rows of a prediction', () => {
 		expect(2 * figures.lengthM.uncertainty).toBeCloseTo(37.8, 0);
 		const rows = rowsOf(content);
 		expect(find(rows, 'resistance')).toMatchObject({ value: '7.5 kΩ', plusMinus: '± 0.7', remark: 'wire diameter' });
-		expect(find(rows, 'length')).toMatchObject({ value: '1,360 m', plusMinus: '± 40' });
-		expect(find(rows, 'mass')).toMatchObject({ value: '38 g', plusMinus: '± 4' });
+		expect(find(rows, 'length')).toMatchObject({ value: '1,365 m', plusMinus: '± 38' });
+		expect(find(rows, 'mass')).toMatchObject({ value: '38.2 g', plusMinus: '± 3.7' });
 		expect(find(rows, 'fill')).toMatchObject({ value: '50 %', plusMinus: '± 12' });
 		expect(find(rows, 'size')).toMatchObject({ value: '67.0 × 16.2 mm', plusMinus: '± 2.3' });
 	});
@@ -89,11 +89,11 @@ describe('the rows of a prediction', () => {
 
 	it('show both coils where they differ, and tell the larger from the smaller', () => {
 		const rows = rowsOf(two(4950, 5350));
-		expect(find(rows, 'each').value).toMatch(/^3\.7 · 4\.0 kΩ$/);
+		expect(find(rows, 'each').value).toMatch(/^3\.69 · 4\.03 kΩ$/);
 		expect(find(rows, 'size').remark).toMatch(/^Slug coil; Screw coil \d/);
 		expect(find(rows, 'room').label).toBe('Room to the flange, Slug coil');
 		expect(find(rows, 'depth').label).toBe('Winding depth, Screw coil');
-		expect(find(rowsOf(two()), 'each')).toMatchObject({ value: '3.7 kΩ', remark: 'alike' });
+		expect(find(rowsOf(two()), 'each')).toMatchObject({ value: '3.73 kΩ', remark: 'alike' });
 		expect(rowsOf(one()).some((row) => row.key === 'each')).toBe(false);
 	});
 
@@ -154,7 +154,7 @@ describe('the rows of a prediction', () => {
 		const rows = figureRows(content, value(predictSpec(content, { calibration })), usualUnits, before);
 		expect(find(rows, 'resistance').value).toMatch(/^7\.\d\d kΩ$|^7\.6 kΩ$/);
 		expect(find(rows, 'resistance').plain).toBe('Without your kept coils: 7.3 kΩ ± 0.7.');
-		expect(find(rows, 'each').plain).toMatch(/^Without your kept coils: 3\.7 · 3\.6 kΩ ± 0\.4\.$/);
+		expect(find(rows, 'each').plain).toMatch(/^Without your kept coils: 3\.69 · 3\.61 kΩ ± \d\.\d+\.$/);
 		expect(find(rows, 'length').plain).toBeNull();
 		expect(find(figureRows(content, before, usualUnits, before), 'resistance').plain).toBeNull();
 		expect(find(rows, 'resistance').shares.map(({ words }) => words)).toContain('readings of your kept coils');

@@ -210,10 +210,10 @@ describe('what some turns more do', () => {
 		const said = (more: number) =>
 			changeText(value(turnsMore(two(), two().wire, null, more)), usualUnits).replaceAll('\u00a0', ' ');
 		expect(said(200)).toMatch(
-			/^\+3\d0 Ω ± \d+, 0\.20\d? mm ± 0\.0\d+ less room to the flange, the peak \d+ Hz ± \d+ lower$/
+			/^\+3\d\d Ω ± \d+, 0\.20\d? mm ± 0\.0\d+ less room to the flange, the peak \d+ Hz ± \d+ lower$/
 		);
 		expect(said(-200)).toMatch(
-			/^−3\d0 Ω ± \d+, 0\.20\d? mm ± 0\.0\d+ more room to the flange, the peak \d+ Hz ± \d+ higher$/
+			/^−3\d\d Ω ± \d+, 0\.20\d? mm ± 0\.0\d+ more room to the flange, the peak \d+ Hz ± \d+ higher$/
 		);
 	});
 

@@ -46,15 +46,15 @@ describe('a decimal text', () => {
 });
 
 describe('the digits of an uncertainty', () => {
-	// The rule worked by hand: one digit from 3 up, two below.
+	// The rule worked by hand: one digit from 4 up, two below.
 	it.each([
-		[0.31, 1],
-		[0.3, 1],
-		[0.29, 2],
+		[0.41, 1],
+		[0.4, 1],
+		[0.31, 2],
 		[0.0914, 2],
 		[0.0187, 3],
 		[2.24, 1],
-		[38, -1],
+		[38, 0],
 		[19, 0],
 		[727, -2],
 		[1, 1],
@@ -76,7 +76,7 @@ describe('a figure with its ±', () => {
 		});
 		expect(plusMinus(7318.66, 45.741, 'resistance', 'kilohm').text).toBe('7.32 kΩ ± 0.09');
 		expect(plusMinus(7467, 363.6, 'resistance', 'ohm').text).toBe('7,500 Ω ± 700');
-		expect(plusMinus(1364.68, 18.92, 'length', 'm').text).toBe('1,360 m ± 40');
+		expect(plusMinus(1364.68, 18.92, 'length', 'm').text).toBe('1,365 m ± 38');
 		expect(plusMinus(1364.68, 9.4, 'length', 'm').text).toBe('1,365 m ± 19');
 	});
 
@@ -91,7 +91,7 @@ describe('a figure with its ±', () => {
 	});
 
 	it('converts differences as differences', () => {
-		expect(plusMinus(25, 1, 'temperature', 'fahrenheit').text).toBe('77 °F ± 4');
+		expect(plusMinus(25, 1, 'temperature', 'fahrenheit').text).toBe('77.0 °F ± 3.6');
 		expect(plusMinus(0.0162, 0.00112, 'length', 'inch').text).toBe('0.64 in ± 0.09');
 	});
 

@@ -20,14 +20,19 @@ export function decimalText(value: number, places: number): string {
 	return value < 0 && /[1-9]/.test(set) ? `−${set}` : set;
 }
 
+/** An uncertainty whose first digit is below this keeps a second one. */
+const twoDigitsBelow = 4;
+/** The ends of a range are read as round figures: they keep a second digit only where the first alone would mislead. */
+const spanTwoDigitsBelow = 3;
+
 /**
- * Decimal places an uncertainty deserves, and the value with it: one significant digit where its first is 3 or more, else
- * two, since 0.1 in place of 0.14 would be off by a third (common practice; JCGM 100, 7.2.6 asks for two at most).
- * Negative: tens, hundreds…
+ * Decimal places an uncertainty deserves, and the value with it: two significant digits where its first is 1 to 3, else one.
+ * 0.1 in place of 0.14 would be off by a third, and the last digit of 7.88 ± 0.31 still tells 50 turns from 100 (common
+ * practice; JCGM 100, 7.2.6 asks for two at most). Negative: tens, hundreds…
  */
-export function placesFor(expanded: number): number {
+export function placesFor(expanded: number, below = twoDigitsBelow): number {
 	const [digits = '1', power = '0'] = expanded.toExponential(9).split('e');
-	return (Number(digits) >= 3 ? 0 : 1) - Number(power);
+	return (Number(digits) < below ? 1 : 0) - Number(power);
 }
 
 export interface PlusMinus {
@@ -93,14 +98,14 @@ export function spanText<Q extends Quantity>(value: number, uncertainty: number,
 	const { value: own, spread, symbol } = converted(value, uncertainty, quantity, unit);
 	if (spread === 0) return plusMinusOf(own, 0, symbol).value;
 	const half = coverage * spread;
-	const places = placesFor(half);
+	const places = placesFor(half, spanTwoDigitsBelow);
 	return joined(`${decimalText(Math.max(0, own - half), places)}–${decimalText(own + half, places)}`, symbol);
 }
 
 /** "+2 to +9 dB". */
 export function decibelSpanText(value: number, uncertainty: number): string {
 	const half = coverage * uncertainty;
-	const places = half > 0 ? placesFor(half) : 1;
+	const places = half > 0 ? placesFor(half, spanTwoDigitsBelow) : 1;
 	const signed = (db: number) => {
 		const text = decimalText(db, places);
 		return db > 0 && /[1-9]/.test(text) ? `+${text}` : text;
