@@ -86,6 +86,21 @@ void raise_event(struct turnline *winder, uint8_t kind)
 	ring_add(winder, kind);
 }
 
+/*
+ * No edge since the tick before: whatever comes next is not the bouncing of what came before. An edge may come while this
+ * is found out: it clears the word itself, or is seen by the second look.
+ */
+static void settle(struct turnline *winder)
+{
+	uint8_t seen = winder->changes_seen;
+	winder->changes_seen = winder->sensor.changes;
+	if (winder->changes_seen != seen)
+		return;
+	winder->sensor.settled = 1;
+	if (winder->sensor.changes != seen)
+		winder->sensor.settled = 0;
+}
+
 static void tick(struct turnline *winder)
 {
 	uint16_t wait = winder->config->report_ms;
@@ -98,13 +113,8 @@ static void tick(struct turnline *winder)
 	winder->tick_at = LOW16(winder->tick_at + wait);
 	if (LOW16(winder->tick_at - LOW16(winder->now_ms)) > wait)
 		winder->tick_at = LOW16(winder->now_ms + wait);
-	/* No edge since the tick before: whatever comes next is not the bouncing of what came before. */
-	if (!(winder->bits & BIT_TURNING)) {
-		uint8_t changes = winder->sensor.changes;
-		if (changes == winder->changes_seen)
-			winder->sensor.settled = 1;
-		winder->changes_seen = changes;
-	}
+	if (!(winder->bits & BIT_TURNING))
+		settle(winder);
 }
 
 static void tick_now(struct turnline *winder)

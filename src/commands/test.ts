@@ -116,14 +116,15 @@ const packages: { name: string; there: () => boolean }[] = [
 	{ name: 'socat', there: () => existsSync('/usr/bin/socat') },
 	{ name: 'ngspice', there: () => existsSync('/usr/bin/ngspice') },
 	{ name: 'python3-uncertainties', there: () => existsSync('/usr/lib/python3/dist-packages/uncertainties') },
-	// The C core is compiled for this machine at 64 and 32 bits, by two compilers, and for an 8-bit board.
+	// The C core is compiled for this machine at 64 and 32 bits, by two compilers, and for an 8-bit board, which is simulated.
 	{ name: 'gcc', there: () => existsSync('/usr/bin/gcc') },
 	{ name: 'libc6-dev', there: () => existsSync('/usr/include/stdlib.h') },
 	{ name: 'gcc-multilib', there: () => existsSync('/usr/share/doc/gcc-multilib') },
 	{ name: 'clang', there: () => existsSync('/usr/bin/clang') },
 	{ name: 'libclang-rt-dev', there: () => existsSync('/usr/share/doc/libclang-rt-dev') },
 	{ name: 'gcc-avr', there: () => existsSync('/usr/bin/avr-gcc') },
-	{ name: 'avr-libc', there: () => existsSync('/usr/lib/avr/include/avr/io.h') }
+	{ name: 'avr-libc', there: () => existsSync('/usr/lib/avr/include/avr/io.h') },
+	{ name: 'simavr', there: () => existsSync('/usr/bin/simavr') }
 ];
 
 async function ensurePackages(): Promise<void> {

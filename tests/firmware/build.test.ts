@@ -45,8 +45,8 @@ async function make(compiler: string, flags: string[], lines: number): Promise<s
 }
 
 async function stateBytes(compiler: string, flags: string[], lines: number): Promise<number> {
-	const source = join(folder, 'state.c');
-	const object = join(folder, 'state.o');
+	const source = join(folder, `state-${lines}.c`);
+	const object = join(folder, `state-${lines}.o`);
 	writeFileSync(source, '#include "turnline.h"\nstruct turnline state = {0};\n');
 	await tool(compiler, [...flags, '-I', coreFolder, `-DTURNLINE_RING_LINES=${lines}`, '-c', source, '-o', object]);
 	const symbols = await tool(compiler === 'avr-gcc' ? 'avr-nm' : 'nm', ['-S', object]);
@@ -68,6 +68,15 @@ describe('the core', () => {
 	it.each(compilers)('keeps 32 lines within 1 KiB and 256 within 8 KiB: %s', async (_name, compiler, flags) => {
 		expect(await stateBytes(compiler, flags, 32)).toBeLessThanOrEqual(1024);
 		expect(await stateBytes(compiler, flags, 256)).toBeLessThanOrEqual(8192);
+	});
+
+	it('needs on an 8-bit board what its README says', async () => {
+		const readme = readFileSync(join(coreFolder, 'README.md'), 'utf8');
+		const stated = [...readme.matchAll(/^\| 8 bits, .*?\| (\d+) \| [\d,]+ \| [\d,]+ \| ([\d,]+) \|/gm)].map(
+			([, lines, bytes]) => [Number(lines), Number(bytes!.replace(',', ''))]
+		);
+		const measured = [32, 256].map(async (lines) => [lines, await stateBytes('avr-gcc', avr, lines)]);
+		expect(stated).toEqual(await Promise.all(measured));
 	});
 
 	it('refuses to be compiled with fewer lines than the protocol asks for', async () => {
@@ -104,6 +113,26 @@ describe('the core', () => {
 		const sizes = await tool('size', [await whole('gcc', ['-O2'], 32)]);
 		const [, data, bss] = sizes.trim().split('\n')[1]!.trim().split(/\s+/);
 		expect([data, bss]).toEqual(['0', '0']);
+	});
+});
+
+describe('the same hour on another machine', () => {
+	it('is told to the letter the same with 64, 32 and 8 bits', async () => {
+		const program = async (compiler: string, flags: string[]) => {
+			const file = join(folder, `replay${flags[0]}`);
+			await tool(compiler, [...strict, ...flags, ...coreSources, hostSource('replay.c'), '-o', file]);
+			return file;
+		};
+		const here = await tool(await program('gcc', ['-O2']), []);
+		const said = new Set([...here.matchAll(/ (?:k|why)=(\w+)/g)].map(([, word]) => word));
+		for (const word of ['go', 'stop', 'rev', 'ease', 'look', 'at', 'over', 'btn', 'old', 'gone'])
+			expect(said).toContain(word);
+		expect(here).toMatch(/ pb=/);
+		expect(await tool(await program('gcc', ['-m32', '-O2']), [])).toBe(here);
+		// A microcontroller of 8 bits, simulated: it colours what its serial port says and puts a dot after each line.
+		const simulated = await tool('simavr', ['-m', 'atmega2560', '-f', '16000000', await program('avr-gcc', avr)]);
+		const lines = [...simulated.matchAll(/^[^A-Z\n]*([A-Z]+ .* ~[0-9A-F]{4})\.$/gm)].map(([, line]) => line);
+		expect(lines.join('\n')).toBe(here.trimEnd());
 	});
 });
 
