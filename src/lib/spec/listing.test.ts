@@ -15,14 +15,15 @@ describe('a spec as a list', () => {
 		expect(value('Screw coil', 'Turns')).toBe('5,000 turns');
 		expect(value('Slug coil', 'Pole that faces the strings')).toBe('north up');
 		expect(value('Bobbin', 'Traverse')).toBe('6.2 mm');
-		expect(value('Wire', 'Bare diameter')).toBe('AWG 42');
+		// 0.06334 mm: the exact gauge law (ASTM B258).
+		expect(value('Wire', 'Bare diameter')).toBe('AWG 42, 0.06334 mm');
 		expect(value('Wire', 'Enamel')).toBe('polyurethane, solders through');
-		expect(value('Load', 'Volume pot')).toBe('500 kΩ');
-		expect(value('Load', 'Cable, capacitance')).toBe('100 pF/m');
+		expect(value('What it plays into', 'Volume pot')).toBe('500 kΩ');
+		expect(value('What it plays into', 'Cable, capacitance')).toBe('100 pF/m');
 	});
 
 	it('says what an empty field means, and leaves out words nobody wrote', () => {
-		expect(value('Load', 'Self-capacitance')).toBe('by the packing');
+		expect(value('What it plays into', 'Self-capacitance')).toBe('by the packing');
 		expect(value('Leads, cover and potting', 'Potting')).toBeUndefined();
 		expect(value('Looks', 'First look at', { ...two, looks: { every: 500, first: 0 } })).toBe('none');
 	});

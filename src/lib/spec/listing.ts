@@ -105,7 +105,7 @@ const groups: readonly { title: string; fields: readonly SpecField[] }[] = [
 	},
 	{ title: 'Looks', fields: ['lookEvery', 'firstLook'] },
 	{
-		title: 'Load',
+		title: 'What it plays into',
 		fields: [
 			'volumePot',
 			'volumeTaper',
@@ -143,6 +143,9 @@ export function specListing(content: SpecContent, units: UnitPreference, spoolNa
 		if (counted.includes(field)) return text === '0' && /Look/.test(field) ? 'none' : `${text} ${turns}`;
 		const measure = measures[field];
 		if (!measure) return text;
+		// A gauge is no size that a micrometer shows.
+		if (field === 'wireDiameter' && text.startsWith('AWG'))
+			return `${text}, ${measure.tell(content.wire.diameterM, 4)}`;
 		if (text === '') return measure.empty ?? '';
 		const unit = measure.symbol === '' ? text : `${text} ${measure.symbol}`;
 		if (field === 'packing' && content.packing.measured) return `${unit}, measured`;
