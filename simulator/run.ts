@@ -1,4 +1,4 @@
-import type { Carrier, CarrierTarget } from './carrier.ts';
+import type { Carrier, CarrierEvents, CarrierTarget } from './carrier.ts';
 import { openHttpCarrier } from './carrier-http.ts';
 import { openWsCarrier } from './carrier-ws.ts';
 import { ordinaryDevice, type DeviceTraits, type Retained } from './device.ts';
@@ -25,6 +25,8 @@ export interface SimulationOptions {
 	winders: WinderTarget[];
 	scenario?: ScenarioName;
 	carrier?: 'ws' | 'http';
+	/** Another way than these two, such as a cable. */
+	openCarrier?: (target: CarrierTarget, events: CarrierEvents) => Carrier;
 	/** Simulated time runs this many times faster than the wall clock; the winder's time scale at the server must be the same. */
 	speedUp?: number;
 	seed?: number;
@@ -197,7 +199,7 @@ class Link {
 			(entry) => options.truth?.({ ...entry, at: Date.now() }),
 			() => this.restarts()
 		);
-		const open = options.carrier === 'http' ? openHttpCarrier : openWsCarrier;
+		const open = options.openCarrier ?? (options.carrier === 'http' ? openHttpCarrier : openWsCarrier);
 		this.carrier = open(this.carrierTarget(seed), {
 			up: () => {
 				this.carrierUp = true;

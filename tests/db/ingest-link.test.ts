@@ -120,6 +120,24 @@ describe('a link', () => {
 		link.socket.close();
 	});
 
+	it('is told ACK of each boot it brought lines of, also of an earlier one', async () => {
+		const link = await new Link(url, shop.linkKey).opened();
+		link.socket.send([counter.hi(), ...counter.wind(20)].join('\n'));
+		await link.ack(counter.n);
+		// It restarts, and then what lay in a spool of the boot before comes.
+		const last = [counter.event('btn'), counter.tick()];
+		const { n, e } = counter;
+		const next = new Counter(counter.clock, '77AA01F3');
+		link.socket.send([next.hi(), next.tick()].join('\n'));
+		await link.until(() => link.told.find((line) => line.verb === 'ACK' && line.b === '77AA01F3'));
+		link.socket.send(last.join('\n'));
+		const told = await link.until(() =>
+			link.told.find((line) => line.verb === 'ACK' && line.b === '5C0E91A7' && line.n >= n)
+		);
+		expect(told).toEqual({ verb: 'ACK', b: '5C0E91A7', n, e });
+		link.socket.close();
+	});
+
 	it('is told ACK once its lines are on disk', async () => {
 		const link = await open();
 		link.socket.send([counter.hi(), ...counter.wind(12)].join('\n'));

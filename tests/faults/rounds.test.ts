@@ -9,6 +9,7 @@ import type { TruthBoot } from '../../simulator/winder.ts';
 import { formatLine } from '../../src/lib/turnline/index.ts';
 import { makeTemplate } from '../db/harness.ts';
 import { startServer, type TestServer, type TestWinder } from '../e2e/server.ts';
+import { winderRows } from './rows.ts';
 
 /**
  * Four winders wind over bad links while the server and PostgreSQL are killed with -9. Afterwards the rows must hold each
@@ -60,26 +61,6 @@ async function killNowAndThen(server: TestServer, seed: number, ended: () => boo
 		killed.push(victim);
 	}
 	return killed;
-}
-
-async function winderRows(server: TestServer, winder: TestWinder) {
-	return inWorkshop(server.database.owner, server.workshop.id, async (trx) => ({
-		boots: await trx.selectFrom('boot').selectAll().where('winder_id', '=', winder.id).execute(),
-		events: await trx
-			.selectFrom('kept_line')
-			.selectAll()
-			.where('winder_id', '=', winder.id)
-			.where('k', 'is not', null)
-			.orderBy('boot')
-			.orderBy('e')
-			.execute(),
-		facts: await trx
-			.selectFrom('fact')
-			.select(['no', 'kind'])
-			.where('winder_id', '=', winder.id)
-			.orderBy('no')
-			.execute()
-	}));
 }
 
 function truthOf(results: SimulationResult[], winder: TestWinder): WinderResult {

@@ -99,6 +99,8 @@ export interface TakenIn {
 	rejected: RejectedLine[];
 	/** May be told to the winder once `committed`. */
 	ack: { b: string; n: number; e: number } | null;
+	/** The same of each boot these lines were of: a spool may bring those of an earlier one. */
+	acks: { b: string; n: number; e: number }[];
 	commands: string[];
 	retryMs: number;
 	/** null: it is on disk. */
@@ -181,7 +183,7 @@ export class IngestCore implements Ingest {
 	async receive(link: WinderRef, lines: string[], carrier: Carrier, receivedAtMs: number): Promise<Received> {
 		const step = await this.takeIn(link, lines, carrier, receivedAtMs);
 		if (!step.ok) return step;
-		const { committed, ...taken } = step.taken;
+		const { committed, acks: _acks, ...taken } = step.taken;
 		if (committed && !(await this.#inTime(committed))) {
 			return { ok: false, why: 'not-saved', retryAfterS: notSavedRetryS };
 		}
@@ -235,6 +237,7 @@ export class IngestCore implements Ingest {
 				...counts,
 				rejected,
 				ack: ackOf(seat.state),
+				acks: acksOf(seat.state, good),
 				commands: carrier === 'ws' ? [] : this.#commandsFor(seat, 'all'),
 				retryMs: this.#pollMs(seat),
 				committed: this.#commit.pending(seat.shop.id, seat.id)
@@ -858,6 +861,14 @@ export class IngestCore implements Ingest {
 
 /** The name of a seat, however the id was spelt that led to it. */
 const keyOf = (workshopId: string, winderId: string) => `${workshopId}/${canonicalId(winderId)}`;
+
+/** What may be acknowledged of each boot that has totals among these lines. */
+function acksOf(state: WinderState, good: readonly { line: DeviceLine }[]): TakenIn['acks'] {
+	const heard = good.flatMap(({ line }) =>
+		line.verb === 'T' || line.verb === 'E' || line.verb === 'HI' ? [line.b] : []
+	);
+	return [...new Set(heard)].flatMap((b) => ackOf(state, b) ?? []);
+}
 
 /** Cursors of the boots lines were heard of. Totals held for the maker's word are not in them. */
 function cursorsOf(state: WinderState, heard: Set<string>): Cursor[] {

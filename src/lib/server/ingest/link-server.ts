@@ -101,20 +101,20 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 		};
 		const link: SeatLink = { send, close: (code, reason) => socket.close(code, reason), byKey };
 
-		// What may be acknowledged once it is on disk; one waiter a link, however many messages come meanwhile.
-		let ack: TakenIn['ack'] = null;
+		// What may be acknowledged once it is on disk, by boot; one waiter a link, however many messages come meanwhile.
+		const acks = new Map<string, TakenIn['acks'][number]>();
 		let committed: Promise<void> | null = null;
 		let acking = false;
 		const acknowledge = async () => {
 			if (acking) return;
 			acking = true;
-			while (ack && socket.readyState === socket.OPEN) {
-				const saying = ack;
+			while (acks.size > 0 && socket.readyState === socket.OPEN) {
+				const saying = [...acks.values()];
 				const until = committed;
-				ack = null;
+				acks.clear();
 				committed = null;
 				await until;
-				send([formatLine({ verb: 'ACK', ...saying })]);
+				send(saying.map((ack) => formatLine({ verb: 'ACK', ...ack })));
 			}
 			acking = false;
 		};
@@ -137,8 +137,8 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 			const step = await ingest.takeIn(ref, lines, 'ws', Date.now());
 			if (step.ok) {
 				againstHold = 0;
-				if (step.taken.ack) {
-					ack = step.taken.ack;
+				if (step.taken.acks.length > 0) {
+					for (const ack of step.taken.acks) acks.set(ack.b, ack);
 					committed = step.taken.committed;
 					void acknowledge();
 				}
