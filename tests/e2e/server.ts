@@ -65,6 +65,8 @@ export interface ServerOptions {
 	/** Names beside this machine's own that browsers may use. */
 	allowedHosts?: string[];
 	host?: string;
+	/** More of the environment; read at each start. */
+	env?: Record<string, string>;
 	/** Where to make the database; the cluster of the test run unless given. */
 	cluster?: { url: string; template: string };
 }
@@ -85,7 +87,7 @@ export async function startServer(options: ServerOptions = {}): Promise<TestServ
 		const args = [join(projectFolder, 'src', 'entry.js'), '--host', host, '--port', String(port)];
 		for (const name of options.allowedHosts ?? []) args.push('--allow-host', name);
 		child = spawn(process.execPath, args, {
-			env: childEnv({ DATABASE_URL: database.url, AUTH_SECRET: authSecret, NODE_ENV: 'production' }),
+			env: childEnv({ DATABASE_URL: database.url, AUTH_SECRET: authSecret, NODE_ENV: 'production', ...options.env }),
 			stdio: ['ignore', 'pipe', 'pipe']
 		});
 		exited = new Promise((resolve) => child.once('exit', (code) => resolve(code)));

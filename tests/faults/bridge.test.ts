@@ -7,13 +7,14 @@ import { throwawayCluster } from '../../src/commands/cluster.ts';
 import { ensureBuilt } from '../../src/commands/build.ts';
 import { testEnv } from '../../src/lib/server/env.ts';
 import { between, randomFrom, wholeBetween, type Random } from '../../simulator/random.ts';
-import { startSimulation, type Simulation, type WinderResult } from '../../simulator/run.ts';
+import { startSimulation, type Simulation } from '../../simulator/run.ts';
 import { makeTemplate } from '../db/harness.ts';
 import { startServer, type TestServer, type TestWinder } from '../e2e/server.ts';
 import { openCableCarrier, type CableCarrier } from '../serial/cable-carrier.ts';
 import { until } from '../serial/pty.ts';
 import { bridgeProcess, type BridgeProcess } from './bridge-process.ts';
 import { winderRows } from './rows.ts';
+import { expectTruth } from './truth.ts';
 
 /**
  * A winder on a cable, the bridge and the server, each killed or unplugged at seeded moments. Afterwards the rows must hold
@@ -88,20 +89,6 @@ async function caughtUp(): Promise<void> {
 	});
 }
 
-async function expectTruth(truth: WinderResult): Promise<void> {
-	expect(truth.coilsReached, 'the coil was wound').toBe(1);
-	expect(truth.eventsWaiting, 'no event is left to send').toBe(0);
-	expect(truth.boots).toHaveLength(1);
-	const boot = truth.boots[0]!;
-	const rows = await winderRows(server, winder);
-	const stored = rows.events.map(({ n, e, k, f, v }) => ({ n, e, k, f, v }));
-	const told = boot.events.map(({ n, e, k, f, v }) => ({ n, e, k, f, v }));
-	expect(stored, 'each event once, as it was told').toEqual(told);
-	const cursor = rows.boots.find((row) => row.boot === boot.boot);
-	expect({ f: cursor?.forward, v: cursor?.reverse }).toEqual({ f: boot.forward, v: boot.reverse });
-	expect(rows.facts.map((fact) => fact.kind)).not.toContain('restarted');
-}
-
 /** One thing after another goes wrong, until told to stop. */
 async function mischief(random: Random, seed: number, ended: () => boolean): Promise<string[]> {
 	const done: string[] = [];
@@ -143,7 +130,7 @@ describe('a bridge between a cable and the server', () => {
 			expect(done, 'something went wrong while it wound').not.toEqual([]);
 			await caughtUp();
 			expect(await bridge.stop()).toBe(0);
-			await expectTruth(result.winders[0]!);
+			await expectTruth(server, winder, result.winders[0]!);
 		},
 		roundMsMax
 	);
@@ -163,7 +150,7 @@ describe('a bridge between a cable and the server', () => {
 			await bridge.start();
 			await server.start();
 			await caughtUp();
-			await expectTruth(result.winders[0]!);
+			await expectTruth(server, winder, result.winders[0]!);
 		},
 		roundMsMax
 	);
@@ -194,7 +181,7 @@ describe('a bridge between a cable and the server', () => {
 				await caughtUp();
 				expect(await bridge.stop()).toBe(0);
 				bridge = null;
-				await expectTruth(result.winders[0]!);
+				await expectTruth(server, winder, result.winders[0]!);
 			} finally {
 				await bridge?.kill();
 				execFileSync('umount', ['--lazy', disk]);

@@ -41,6 +41,8 @@ export interface LinePortEvents {
 	opened?(path: string): void;
 	/** The cable was pulled, or the board went away; it is looked for. */
 	lost?(): void;
+	/** Lines were dropped before they could be read. */
+	dropped?(why: 'too-long' | 'not-ascii', lines: number, atMs: number): void;
 	/** Each time it changes; null: all is well again. */
 	trouble?(trouble: Trouble | null): void;
 }
@@ -177,9 +179,13 @@ export function openLinePort(path: string, events: LinePortEvents, places: TtyPl
 				if (!parsed.ok) counts.refused += 1;
 				heard.push({ text, parsed });
 			}
-			counts.tooLong += splitter.dropped.tooLong - before.tooLong;
-			counts.notAscii += splitter.dropped.notAscii - before.notAscii;
+			const tooLong = splitter.dropped.tooLong - before.tooLong;
+			const notAscii = splitter.dropped.notAscii - before.notAscii;
 			before = { ...splitter.dropped };
+			counts.tooLong += tooLong;
+			counts.notAscii += notAscii;
+			if (tooLong > 0) events.dropped?.('too-long', tooLong, receivedAtMs);
+			if (notAscii > 0) events.dropped?.('not-ascii', notAscii, receivedAtMs);
 			say(share.unreadable ? unreadable(path) : null);
 			if (heard.length === 0) return;
 			const taken = events.lines(heard, receivedAtMs);

@@ -3,10 +3,11 @@ import type { Duplex } from 'node:stream';
 import { connect } from './db/connect.ts';
 import { databaseHealth } from './db/health.ts';
 import type { Db } from './db/schema.ts';
-import { env } from './env.ts';
+import { env, type SerialWinder } from './env.ts';
 import { IngestCore } from './ingest/ingest.ts';
 import { LinkKeys } from './ingest/keys.ts';
 import { createLinkServer } from './ingest/link-server.ts';
+import type { SerialLinks, SerialPortNow } from './ingest/serial-links.ts';
 import type { Ingest } from './ingest/types.ts';
 import { createLiveHub, type LiveHub } from './live/hub.ts';
 
@@ -24,6 +25,10 @@ export interface Turnstead {
 	keys: LinkKeys;
 	/** Takes over a WebSocket upgrade of the HTTP server. */
 	upgrade(request: IncomingMessage, socket: Duplex, head: Buffer): void;
+	/** Reads serial ports of this machine itself; once. */
+	readSerial(winders: readonly SerialWinder[]): Promise<void>;
+	/** Those ports as they are now. */
+	serialPorts(): SerialPortNow[];
 	/** Whether the database answers, as the right role, with the migrations this code needs. */
 	health(): Promise<{ ok: true } | { ok: false; why: string }>;
 	/**
@@ -49,7 +54,12 @@ export function turnstead(): Turnstead {
 
 /** Starts the program, once; afterwards `turnstead()` finds it. */
 export async function startTurnstead(): Promise<Turnstead> {
-	return (places[place] ??= makeTurnstead(connect(env().databaseUrl, { role: 'turnstead_app' })));
+	const there = places[place];
+	if (there) return there;
+	const { databaseUrl, serialWinders } = env();
+	const app = (places[place] = makeTurnstead(connect(databaseUrl, { role: 'turnstead_app' })));
+	await app.readSerial(serialWinders);
+	return app;
 }
 
 /** The program on a database connected as turnstead_app. Nothing is asked of the database before the first request. */
@@ -62,9 +72,11 @@ export function makeTurnstead(db: Db): Turnstead {
 	beat.unref();
 	ingest.start();
 
+	let serial: SerialLinks | null = null;
+
 	let stopped: Promise<Unsaved | null> | null = null;
 	const stop = async () => {
-		await links.close();
+		await Promise.all([links.close(), serial?.close()]);
 		const unsaved = await ingest.stop();
 		clearInterval(beat);
 		live.close();
@@ -78,6 +90,13 @@ export function makeTurnstead(db: Db): Turnstead {
 		live,
 		keys,
 		upgrade: links.upgrade,
+		async readSerial(winders) {
+			if (winders.length === 0 || serial) return;
+			// Loaded only where it is wanted: it brings a native module.
+			const { openSerialLinks } = await import('./ingest/serial-links.ts');
+			serial = openSerialLinks(ingest, keys, winders);
+		},
+		serialPorts: () => serial?.now() ?? [],
 		health: () => databaseHealth(db),
 		stop: () => (stopped ??= stop())
 	};

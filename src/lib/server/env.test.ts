@@ -15,7 +15,11 @@ function refusal(work: () => unknown): string {
 
 describe('the environment of the server', () => {
 	test('is taken as it is when it fits', () => {
-		expect(serverEnv(good)).toEqual({ databaseUrl: good.DATABASE_URL, authSecret: good.AUTH_SECRET });
+		expect(serverEnv(good)).toEqual({
+			databaseUrl: good.DATABASE_URL,
+			authSecret: good.AUTH_SECRET,
+			serialWinders: []
+		});
 	});
 
 	test('names the variable, what came and an example', () => {
@@ -79,4 +83,24 @@ describe('the environment of the commands', () => {
 		]);
 		expect(refusal(() => startEnv({ ALLOWED_HOSTS: 'http://a.example/' }))).toContain('ALLOWED_HOSTS');
 	});
+
+	test('reads serial ports with the key of the winder at each', () => {
+		expect(
+			serverEnv({ ...good, WINDER_SERIAL: '/dev/ttyACM0=key-of-w-01,/dev/serial/by-id/a=key_of=w-02' })
+		).toMatchObject({
+			serialWinders: [
+				{ path: '/dev/ttyACM0', linkKey: 'key-of-w-01' },
+				{ path: '/dev/serial/by-id/a', linkKey: 'key_of=w-02' }
+			]
+		});
+	});
+
+	test.each(['/dev/ttyACM0', '/dev/ttyACM0=', 'ttyACM0=secret-of-w-01', '/dev/a=secret-of-w-01,/dev/a=secret-of-w-02'])(
+		'refuses %s before anything starts, and shows no key',
+		(value) => {
+			const said = refusal(() => startEnv({ WINDER_SERIAL: value }));
+			expect(said).toContain('WINDER_SERIAL must be serial ports');
+			expect(said).not.toContain('secret-of-w');
+		}
+	);
 });

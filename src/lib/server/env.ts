@@ -54,7 +54,30 @@ const names = z
 	.refine((list) => list.every((name) => /^[a-z0-9.:[\]-]+$/i.test(name)))
 	.meta({ wants: 'host names without a port, separated by commas', example: 'winding-room.example,bench.local' });
 
-const serverShape = z.object({ DATABASE_URL: databaseUrl, AUTH_SECRET: authSecret });
+/** A serial port this server reads itself, and the link key of the winder at it. */
+export interface SerialWinder {
+	path: string;
+	linkKey: string;
+}
+
+const serialWinders = z
+	.string()
+	.transform((text) => text.split(/[\s,]+/).filter((part) => part !== ''))
+	.refine((parts) => parts.every((part) => /^\/[!-+\--<>-~]+=[!-+\--~]{8,200}$/.test(part)))
+	.transform((parts) => parts.map((part) => [part.slice(0, part.indexOf('=')), part.slice(part.indexOf('=') + 1)]))
+	.transform((pairs) => pairs.map(([path = '', linkKey = '']): SerialWinder => ({ path, linkKey })))
+	.refine((found) => new Set(found.map(({ path }) => path)).size === found.length)
+	.meta({
+		wants: 'serial ports, each once, each with "=" and the link key of the winder at it, separated by commas',
+		example: '/dev/ttyACM0=the-link-key-of-w-01,/dev/serial/by-id/usb-board-if00=the-link-key-of-w-02',
+		secret: true
+	});
+
+const serverShape = z.object({
+	DATABASE_URL: databaseUrl,
+	AUTH_SECRET: authSecret,
+	WINDER_SERIAL: serialWinders.default([])
+});
 
 const startShape = z.object({
 	HOST: host.default('127.0.0.1'),
@@ -64,6 +87,8 @@ const startShape = z.object({
 	TLS_CERT: file.optional(),
 	TLS_KEY: file.optional(),
 	SIMULATOR: onOff.default('on'),
+	// Read by the server; here so that a mistake in it is told before anything starts.
+	WINDER_SERIAL: serialWinders.default([]),
 	ALLOWED_HOSTS: names.default([]),
 	TRUST_PROXY: onOff.default('off')
 });
@@ -81,6 +106,7 @@ const testShape = z.object({
 export interface ServerEnv {
 	databaseUrl: string;
 	authSecret: string;
+	serialWinders: SerialWinder[];
 }
 
 export interface StartEnv {
@@ -142,7 +168,11 @@ export function env(): ServerEnv {
 
 export function serverEnv(source: Source): ServerEnv {
 	const found = read(serverShape, source);
-	return { databaseUrl: found.DATABASE_URL, authSecret: found.AUTH_SECRET };
+	return {
+		databaseUrl: found.DATABASE_URL,
+		authSecret: found.AUTH_SECRET,
+		serialWinders: found.WINDER_SERIAL
+	};
 }
 
 /** What the commands need. Throws EnvError. */
@@ -181,16 +211,18 @@ export function provideTestEnv(databaseUrl: string, template: string): void {
 }
 
 /** Gives the served program, running in this process, what it reads through `env()`. */
-export function provideServerEnv(values: ServerEnv): void {
+export function provideServerEnv(values: Pick<ServerEnv, 'databaseUrl' | 'authSecret'>): void {
 	process.env.DATABASE_URL = values.databaseUrl;
 	process.env.AUTH_SECRET = values.authSecret;
 }
+
+const serverOnly = ['DATABASE_URL', 'AUTH_SECRET', 'WINDER_SERIAL'];
 
 /** The environment for a child process: this one's, without what only the server may know, and with `more`. */
 export function childEnv(more: Record<string, string> = {}): Record<string, string> {
 	const copy: Record<string, string> = {};
 	for (const [name, value] of Object.entries(process.env)) {
-		if (value !== undefined && name !== 'DATABASE_URL' && name !== 'AUTH_SECRET') copy[name] = value;
+		if (value !== undefined && !serverOnly.includes(name)) copy[name] = value;
 	}
 	return { ...copy, ...more };
 }

@@ -72,6 +72,8 @@ const giveWaitMsMax = 1_000;
 const whichWinderTurns = 5;
 /** Late lines of a closed run are drawn into its trace no more often than this. */
 const traceAgainMs = 2_000;
+/** Of what one read brought, so many are noted: noise comes by the hundred. */
+const droppedNotedMax = 20;
 /** Taps older than this many facts are not looked for: more than a day at a bench. */
 const tapFactsBack = 5_000;
 
@@ -238,11 +240,20 @@ export class IngestCore implements Ingest {
 				rejected,
 				ack: ackOf(seat.state),
 				acks: acksOf(seat.state, good),
-				commands: carrier === 'ws' ? [] : this.#commandsFor(seat, 'all'),
+				// Down a socket and a cable they go by themselves.
+				commands: carrier === 'ws' || carrier === 'serial' ? [] : this.#commandsFor(seat, 'all'),
 				retryMs: this.#pollMs(seat),
 				committed: this.#commit.pending(seat.shop.id, seat.id)
 			}
 		};
+	}
+
+	/** Lines that could not even be read as text, for the winder's page: counted, and gone. */
+	async noteDropped(ref: WinderRef, why: 'too-long' | 'not-ascii', lines: number, at: number): Promise<void> {
+		const seat = await this.#seat(ref.workshopId, ref.winderId);
+		if (!seat) return;
+		for (let i = 0; i < Math.min(lines, droppedNotedMax); i += 1) seat.record.line(at, '', why, 'serial');
+		this.#show(seat);
 	}
 
 	#fold(

@@ -10,7 +10,8 @@ import {
 	pingSeconds,
 	subprotocol
 } from '../../turnline/index.ts';
-import type { IngestCore, TakenIn } from './ingest.ts';
+import { Acknowledger } from './acknowledger.ts';
+import type { IngestCore } from './ingest.ts';
 import { bearerOf, type LinkKeys } from './keys.ts';
 import type { SeatLink } from './seat.ts';
 import type { WinderRef } from './types.ts';
@@ -101,24 +102,7 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 		};
 		const link: SeatLink = { send, close: (code, reason) => socket.close(code, reason), byKey };
 
-		// What may be acknowledged once it is on disk, by boot; one waiter a link, however many messages come meanwhile.
-		const acks = new Map<string, TakenIn['acks'][number]>();
-		let committed: Promise<void> | null = null;
-		let acking = false;
-		const acknowledge = async () => {
-			if (acking) return;
-			acking = true;
-			while (acks.size > 0 && socket.readyState === socket.OPEN) {
-				const saying = [...acks.values()];
-				const until = committed;
-				acks.clear();
-				committed = null;
-				await until;
-				send(saying.map((ack) => formatLine({ verb: 'ACK', ...ack })));
-			}
-			acking = false;
-		};
-
+		const acknowledger = new Acknowledger(send, () => socket.readyState === socket.OPEN);
 		let againstHold = 0;
 		const hold = (ms: number) => {
 			againstHold += 1;
@@ -137,11 +121,7 @@ export function createLinkServer(ingest: IngestCore, keys: LinkKeys): LinkServer
 			const step = await ingest.takeIn(ref, lines, 'ws', Date.now());
 			if (step.ok) {
 				againstHold = 0;
-				if (step.taken.acks.length > 0) {
-					for (const ack of step.taken.acks) acks.set(ack.b, ack);
-					committed = step.taken.committed;
-					void acknowledge();
-				}
+				acknowledger.taken(step.taken);
 				return;
 			}
 			switch (step.why) {

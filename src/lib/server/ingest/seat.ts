@@ -10,7 +10,7 @@ import { LineBucket } from './rate.ts';
 /** More taps than a bench sees in a day of small coils. */
 const tapsMax = 512;
 
-/** One open WebSocket of a winder, as the fold's keeper sees it. */
+/** One open WebSocket or serial port of a winder, as the fold's keeper sees it. */
 export interface SeatLink {
 	send(lines: string[]): void;
 	close(code: number, reason: string): void;

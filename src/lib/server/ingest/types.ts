@@ -2,7 +2,7 @@ import type { Refusal } from '../../turnline/index.ts';
 import type { LiveView, Tap, TapRefusal } from '../../winding/types.ts';
 
 /** How lines came. */
-export type Carrier = 'http' | 'ndjson' | 'ws';
+export type Carrier = 'http' | 'ndjson' | 'ws' | 'serial';
 
 export interface WinderRef {
 	workshopId: string;
@@ -59,7 +59,7 @@ export interface LinkLog {
 	/** How many lines were refused for each reason. */
 	refused: Partial<Record<Refusal, number>>;
 	carriers: Partial<Record<Carrier, CarrierLog>>;
-	/** WebSocket links open now. */
+	/** WebSockets and serial ports open now. */
 	links: number;
 }
 

@@ -21,19 +21,22 @@ export interface LinkNow {
 	lines: { at: number; text: string; verdict: string; refused: boolean }[];
 	refused: { text: string; count: number }[];
 	carriers: { name: string; lastAt: number; lines: number }[];
+	/** What is wrong at the cable to the server itself, as sentences. */
+	cableProblems: string[];
 }
 
 const carrierNames: Record<Carrier, string> = {
 	http: 'HTTP, text lines',
 	ndjson: 'HTTP, JSON lines',
-	ws: 'WebSocket'
+	ws: 'WebSocket',
+	serial: 'Cable at the server'
 };
 
 /** Enough to see what goes on, little enough to read. */
 const linesShown = 12;
 
 export async function linkNow(workshopId: string, winderId: string): Promise<LinkNow | null> {
-	const { ingest } = turnstead();
+	const { ingest, serialPorts } = turnstead();
 	const view = await ingest.view(workshopId, winderId);
 	if (!view) return null;
 	const log = ingest.linkLog(workshopId, winderId);
@@ -60,7 +63,10 @@ export async function linkNow(workshopId: string, winderId: string): Promise<Lin
 		carriers: (Object.keys(carrierNames) as Carrier[]).flatMap((name) => {
 			const carrier = log.carriers[name];
 			return carrier ? [{ name: carrierNames[name], lastAt: carrier.lastAt, lines: carrier.lines }] : [];
-		})
+		}),
+		cableProblems: serialPorts().flatMap(({ winder, problem }) =>
+			winder?.workshopId === workshopId && winder.winderId === view.winderId && problem !== null ? [problem] : []
+		)
 	};
 }
 
