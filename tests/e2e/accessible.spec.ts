@@ -1,21 +1,8 @@
-import AxeBuilder from '@axe-core/playwright';
 import type { Page } from '@playwright/test';
+import { accessible } from './accessible.ts';
 import { BenchPage } from './bench-page.ts';
 import { HandWinder, handSettings } from './hand-winder.ts';
 import { expect, test, type Shop } from './fixtures.ts';
-
-/** Everything WCAG 2.2 asks at levels A and AA that can be found by looking at the page as it stands. */
-const tags = ['wcag2a', 'wcag2aa', 'wcag21a', 'wcag21aa', 'wcag22aa'];
-
-async function accessible(page: Page, state: string): Promise<void> {
-	const { violations } = await new AxeBuilder({ page }).withTags(tags).analyze();
-	const found = violations.map(({ id, help, nodes }) => ({
-		id,
-		help,
-		at: nodes.map(({ target }) => target.join(' '))
-	}));
-	expect(found, state).toEqual([]);
-}
 
 async function addRun({ server, workshop }: Shop, hand: HandWinder, screen: Page): Promise<string> {
 	const bench = await new BenchPage(screen).open(server, hand.winder);
@@ -70,7 +57,20 @@ test('signing in and a first password are accessible, refused and done', async (
 test('the pages of the workshop are accessible while there is nothing in them', async ({ shop, screenOf }) => {
 	const { server, workshop } = shop;
 	const page = await screenOf(server, workshop.owner);
-	for (const path of ['/wind', '/book', '/workshop/winders', '/workshop/people', '/me', '/not-a-page', '/book/none']) {
+	for (const path of [
+		'/specs',
+		'/specs/new',
+		'/wind',
+		'/book',
+		'/spools',
+		'/workshop/meters',
+		'/workshop/winders',
+		'/workshop/people',
+		'/me',
+		'/not-a-page',
+		'/book/none',
+		'/specs/none'
+	]) {
 		await page.goto(server.url + path);
 		await expect(page.getByRole('heading', { level: 1 })).toBeVisible();
 		await accessible(page, `${path}, empty`);
