@@ -182,15 +182,8 @@ export class Bridge {
 	}
 
 	#tellSpool(): void {
-		const { keeping, reason, bytes, bytesMax } = this.#spool.state();
-		const text =
-			keeping === 'yes'
-				? ''
-				: keeping === 'full'
-					? bytesMax - bytes < 64 * 1024
-						? 'The spool is full of events that the server has not taken. New lines are not kept and not acknowledged: the winder keeps its own. Bring the server back, or give --spool-max more.'
-						: 'The disk is full. New lines are not kept and not acknowledged: the winder keeps its own. Make room.'
-					: `The spool cannot be written (${reason}). New lines are not kept and not acknowledged: the winder keeps its own.`;
+		const { keeping, reason } = this.#spool.state();
+		const text = keeping === 'yes' ? '' : `${whyNotKept(keeping, reason)} ${notKeptMeans}`;
 		if (text === this.#spoolTrouble) return;
 		this.#spoolTrouble = text;
 		this.#options.tell(text === '' ? 'The spool takes lines again.' : text);
@@ -280,4 +273,13 @@ export class Bridge {
 		);
 		if (size < asideBytesMax) await appendFile(file, `${new Date().toISOString()} ${why} ${text}\n`).catch(() => {});
 	}
+}
+
+const notKeptMeans = 'New lines are not kept and not acknowledged: the winder keeps its own.';
+
+function whyNotKept(keeping: SpoolState['keeping'], reason: string | null): string {
+	if (keeping === 'failing') return `The spool cannot be written (${reason}).`;
+	return reason === 'limit'
+		? 'The spool is full of events that the server has not taken: bring the server back, or give --spool-max more.'
+		: 'The disk is full. Make room.';
 }

@@ -29,8 +29,9 @@ export interface SpoolState {
 	lines: number;
 	bytes: number;
 	bytesMax: number;
-	/** 'full': what it may take holds events alone. 'failing': the disk refuses, with its reason. */
+	/** 'full': what it may take, or what the disk has, holds events alone. 'failing': the disk refuses. */
 	keeping: 'yes' | 'full' | 'failing';
+	/** 'limit', 'disk' or the error of the system; null while it keeps. */
 	reason: string | null;
 	/** Ticks given up for room, since the start. */
 	ticksDropped: number;
@@ -128,7 +129,7 @@ export class Spool {
 			bytes: this.#bytes,
 			bytesMax: this.#bytesMax,
 			keeping: this.#keeping,
-			reason: this.#reason,
+			reason: this.#keeping === 'yes' ? null : this.#reason,
 			ticksDropped: this.#ticksDropped,
 			spoilt: this.#spoilt
 		};
@@ -258,7 +259,6 @@ export class Spool {
 		try {
 			if (lines.length > 0 && !(await this.#makeRoom(text.length))) {
 				this.#keeping = 'full';
-				this.#reason = null;
 				return false;
 			}
 			const segment = await this.#segmentFor(text.length);
@@ -349,7 +349,10 @@ export class Spool {
 	async #room(): Promise<number> {
 		const own = this.#bytesMax - this.#bytes;
 		const disk = await statfs(this.#folder);
-		return Math.min(own, disk.bavail * disk.bsize - spareSegments * this.#segmentBytes);
+		const free = disk.bavail * disk.bsize - spareSegments * this.#segmentBytes;
+		// Which of the two it would be, should it come to that.
+		this.#reason = own <= free ? 'limit' : 'disk';
+		return Math.min(own, free);
 	}
 
 	/** Writes a file anew without its ticks, but for the last of each boot. */

@@ -64,7 +64,7 @@ export interface LinePortState {
 }
 
 export interface LinePort {
-	/** Lines to the board, without LF. false: there is no board, or it does not take them. */
+	/** Lines to the board, without LF. false: there is no board, or it does not take all of them now. */
 	write(lines: readonly string[]): boolean;
 	state(): LinePortState;
 	/** Closes the port and looks for it no more. */
@@ -210,10 +210,12 @@ export function openLinePort(path: string, events: LinePortEvents, places: TtyPl
 
 	return {
 		write(lines) {
-			if (lines.length === 0) return true;
 			if (!port?.isOpen || port.writableLength > unwrittenBytesMax) return false;
-			port.write(`${lines.join('\n')}\n`);
-			return true;
+			// A STOP that would have to wait is void: it might stop the next coil.
+			const waits = port.writableLength > 0;
+			const now = waits ? lines.filter((text) => !/^STOP\b/.test(text)) : lines;
+			if (now.length > 0) port.write(`${now.join('\n')}\n`);
+			return now.length === lines.length;
 		},
 		state: () => ({ path, openAs, board, trouble, ...counts }),
 		async close() {
