@@ -188,6 +188,18 @@ describe('the count of the core', () => {
 			expect(lines.filter(isTick).at(-1)).not.toHaveProperty('x');
 		}));
 
+	it('after a long stand no wrap of that clock takes the first pulse for bouncing', () =>
+		withBoard(['--one-sensor', '--step', '20'], async (board) => {
+			board.order('levels 1');
+			board.wait(50);
+			board.order('levels 0');
+			// The clock of 32 bits says again what it said at the pulse before, and 5 ms.
+			board.nowMs += 2 ** 32 / 1000 - 45;
+			board.order('levels 1');
+			board.wait(1);
+			expect((await board.mark()).f).toBe(2);
+		}));
+
 	it('a magnet missed at a steady speed is suspected and not added', () =>
 		withBoard([], async (board) => {
 			board.turns(10, 100);
