@@ -1,7 +1,7 @@
 import { turnsMax } from './limits.ts';
 import { halfWidthsRefused, modelOhm, modelUncertainty, type CoilModel } from './model.ts';
 import type { Connection } from './pickup.ts';
-import { ok, outside, type Result } from './refuse.ts';
+import { ok, outside, type Refused, type Result } from './refuse.ts';
 import { coilRefused } from './winding.ts';
 
 /**
@@ -48,7 +48,8 @@ const keptMax = 1000;
 /** The model is never taken to be surer than this, whatever half-widths are given. */
 const modelUncertaintyMin = 1e-4;
 
-export function calibrate(model: CoilModel, kept: readonly KeptCoil[]): Result<Calibration> {
+/** What `calibrate` refuses of kept coils; null: nothing. */
+export function keptRefused(model: CoilModel, kept: readonly KeptCoil[]): Refused | null {
 	const refused =
 		outside([['kept.length', kept.length, 1, keptMax]]) ??
 		coilRefused({ ...model, turns: 0, temperatureC: 20 }) ??
@@ -66,6 +67,12 @@ export function calibrate(model: CoilModel, kept: readonly KeptCoil[]): Result<C
 		]);
 		if (beyond) return beyond;
 	}
+	return null;
+}
+
+export function calibrate(model: CoilModel, kept: readonly KeptCoil[]): Result<Calibration> {
+	const refused = keptRefused(model, kept);
+	if (refused) return refused;
 
 	const seen = kept.map((coil) => ({
 		ratio: coil.ohmAt20C / modelOhm(model, coil.turns, coil.connection, 20),

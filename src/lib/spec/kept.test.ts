@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import type { SpecContent } from './content.ts';
-import { calibrationOf, figuresApartMax, packingHalfWidthMin, type KeptReading } from './kept.ts';
+import { apartFromRestMax, calibrationOf, figuresApartMax, packingHalfWidthMin, type KeptReading } from './kept.ts';
 import { predictCoil, predictSpec } from './model.ts';
 import { startingSpec } from './start.ts';
 
@@ -156,6 +156,63 @@ describe('a coil that teaches nothing is named with the reason', () => {
 		const { leftOut, calibration } = said([coil(), coil()], odd);
 		expect(leftOut.map((one) => one.why)).toEqual(['spec-refused', 'spec-refused']);
 		expect(calibration).toBeNull();
+	});
+});
+
+describe('a coil that reads far from the rest', () => {
+	/** Runs at these parts of what the model says, and which of them are left out. */
+	const far = (...ratios: number[]) => {
+		const kept = ratios.map((ratio) => coil({ ohmAt20C: ratio * modelledOhm, uncertaintyOhm: 0 }));
+		const { leftOut, used, calibration } = said(kept);
+		expect(leftOut.every(({ why }) => why === 'far-from-rest')).toBe(true);
+		expect(used.length + leftOut.length).toBe(ratios.length);
+		return { out: leftOut.map(({ runId }) => ratios[kept.findIndex((one) => one.runId === runId)]!), calibration };
+	};
+
+	it('with a fifth of its turns shorted teaches the others nothing', () => {
+		const { out, calibration } = far(1, 1.004, 0.8, 0.996);
+		expect(out).toEqual([0.8]);
+		expect(calibration).toEqual(far(1, 1.004, 0.996).calibration);
+	});
+
+	it('is measured from the middle one, wherever the model lies', () => {
+		// The middle of the five is 1.2; 5 % either way are 1.14 to 1.26.
+		expect(far(1.2, 1.145, 1.255, 1.13, 1.2).out).toEqual([1.13]);
+		expect(far(1.2, 1.145, 1.255, 1.27, 1.2).out).toEqual([1.27]);
+		// Of four it is half way between the middle two, 1.2.
+		expect(far(1.19, 1.21, 1.2, 1.3).out).toEqual([1.3]);
+	});
+
+	it('is one of three at least', () => {
+		expect(far(1, 0.8).out).toEqual([]);
+		expect(far(1, 1, 0.8).out).toEqual([0.8]);
+	});
+
+	it('is not told where half of them disagree: then the band widens', () => {
+		const { out, calibration } = far(1, 1, 0.8, 0.8);
+		expect(out).toEqual([]);
+		expect(calibration!.scatter).toBeGreaterThan(0.05);
+		expect(far(1, 0.9, 0.8).out).toEqual([]);
+	});
+
+	it('is not one whose reading may be off by as much', () => {
+		const off = 1 + apartFromRestMax + 0.03;
+		const kept = (uncertaintyOhm: number) => [coil(), coil(), coil({ ohmAt20C: off * modelledOhm, uncertaintyOhm })];
+		expect(said(kept(0.01 * off * modelledOhm)).leftOut).toHaveLength(1);
+		// 2 · 0.02 are more than the 0.03 beyond.
+		expect(said(kept(0.02 * off * modelledOhm)).leftOut).toEqual([]);
+	});
+
+	it('has no say in packing and cores either', () => {
+		const measured = { outerWidthM: endDiameterM + 0.002 / 0.8 };
+		const wrong = coil({ ...measured, outerWidthM: endDiameterM + 0.002 / 0.9, ohmAt20C: 0.8 * modelledOhm });
+		const { packing, leftOut } = said([coil(measured), coil(measured), wrong]);
+		expect(leftOut).toHaveLength(1);
+		expect(packing).toMatchObject({ value: expect.closeTo(0.8, 9), coils: 2 });
+	});
+
+	it('leaves honest scatter of one in a hundred alone', () => {
+		expect(far(0.98, 0.99, 1, 1.01, 1.02, 1, 0.97, 1.03).out).toEqual([]);
 	});
 });
 

@@ -1,7 +1,8 @@
 import { judge } from '../coil/band.ts';
-import { calibrate, type Calibration, type KeptCoil } from '../coil/calibrate.ts';
+import { calibrate, keptRefused, type Calibration, type KeptCoil } from '../coil/calibrate.ts';
 import { airInductanceH, permeabilityFrom } from '../coil/inductance.ts';
-import { modelOhm, modelUncertainty } from '../coil/model.ts';
+import { coverage } from '../coil/measurement.ts';
+import { modelOhm } from '../coil/model.ts';
 import { windCoil, packingFromWidth } from '../coil/winding.ts';
 import { specLimits, type SpecContent, type SpecWire } from './content.ts';
 import { specModel, usualTemperatureC } from './model.ts';
@@ -41,10 +42,23 @@ export type LeftOutWhy =
 	| 'other-figures'
 	/** Further from the model than wire and bobbin explain. */
 	| 'too-far'
+	/** Further from the other coils than coils of one bobbin and spool differ. */
+	| 'far-from-rest'
 	/** Its reading is worth less than a fifth of itself. */
 	| 'too-unsure'
 	/** The spec's own figures cannot be reckoned with. */
 	| 'spec-refused';
+
+/** After the coil's name and a colon. */
+export const leftOutWords: Record<LeftOutWhy, string> = {
+	'no-resistance': 'no resistance was measured before assembly',
+	'open-or-short': 'it is open or shorted',
+	'other-figures': 'its bobbin of this name has other figures',
+	'too-far': 'it is further off than wire and bobbin explain',
+	'far-from-rest': 'it reads far from the rest; some of its turns may be shorted, or its count or reading wrong',
+	'too-unsure': 'its reading is too unsure to learn from',
+	'spec-refused': 'this spec’s figures cannot be reckoned with'
+};
 
 export interface KeptSay {
 	/** null: no coil to learn from. */
@@ -60,6 +74,14 @@ export interface KeptSay {
 
 /** Core figures of one bobbin name may differ by this part: a file and a caliper; beyond it is another bobbin. No source. */
 export const figuresApartMax = 0.05;
+
+/**
+ * A coil further from the middle of all than this part, and what its own reading may be off, teaches nothing: coils wound
+ * alike differ by half to one in a hundred, so that honest scatter stays well within and widens the band. No source.
+ */
+export const apartFromRestMax = 0.05;
+/** Of two that disagree nobody can say which is wrong. */
+export const restCoilsMin = 3;
 
 /** However well widths agree, the next coil of the same hands is packed this much differently. Common practice, no source. */
 export const packingHalfWidthMin = 0.02;
@@ -78,39 +100,91 @@ export const ironPermeabilityMin = 1.15;
  */
 export function calibrationOf(content: SpecContent, spoolWire: SpecWire | null, kept: readonly KeptReading[]): KeptSay {
 	const model = specModel(content, spoolWire);
-	const candidates: { reading: KeptReading; coil: KeptCoil }[] = [];
+	const say = resistanceSay(content, spoolWire, kept);
+	// Shorted turns or a wrong count tell in a width and an inductance as well.
+	const wrong = say.leftOut.filter(({ why }) => why === 'too-far' || why === 'far-from-rest');
+	const sound = kept.filter(({ runId }) => !wrong.some((coil) => coil.runId === runId));
+	return {
+		...say,
+		packing: fittedPacking(content, model, sound),
+		permeability: fittedPermeability(content, model, sound)
+	};
+}
+
+/** The kept coils that may say what this one should measure: all but itself. */
+export const keptWithout = (kept: readonly KeptReading[], runId: string): readonly KeptReading[] =>
+	kept.some((reading) => reading.runId === runId) ? kept.filter((reading) => reading.runId !== runId) : kept;
+
+/** The part of `calibrationOf` that resistances have to say. */
+export function resistanceSay(
+	content: SpecContent,
+	spoolWire: SpecWire | null,
+	kept: readonly KeptReading[]
+): Pick<KeptSay, 'calibration' | 'used' | 'leftOut'> {
+	const model = specModel(content, spoolWire);
+	const candidates: Candidate[] = [];
 	const leftOut: KeptSay['leftOut'] = [];
+	const leaveOut = ({ runId, sticker }: KeptReading, why: LeftOutWhy) => leftOut.push({ runId, sticker, why });
 	for (const reading of kept) {
 		const judged = usableCoil(model, content, reading);
-		if (typeof judged === 'string') leftOut.push({ runId: reading.runId, sticker: reading.sticker, why: judged });
-		else candidates.push({ reading, coil: judged });
+		if (typeof judged === 'string') leaveOut(reading, judged);
+		else candidates.push({ reading, ...judged });
 	}
+	const far = farFromRest(candidates);
+	for (const { reading } of far) leaveOut(reading, 'far-from-rest');
+	const used = candidates.filter((candidate) => !far.includes(candidate));
 	// Each went through by itself, so all of them do.
 	const fitted =
-		candidates.length > 0
+		used.length > 0
 			? calibrate(
 					model,
-					candidates.map(({ coil }) => coil)
+					used.map(({ coil }) => coil)
 				)
 			: null;
 	const calibration = fitted?.ok ? fitted.value : null;
 	return {
 		calibration,
-		used: candidates.flatMap(({ reading, coil }, i) => {
+		used: used.flatMap(({ reading, coil }, i) => {
 			const part = calibration?.coils[i];
 			if (!part) return [];
 			const { runId, sticker, turns } = reading;
 			return [{ runId, sticker, turns, ohmAt20C: coil.ohmAt20C, ...part }];
 		}),
-		leftOut,
-		packing: fittedPacking(content, model, kept),
-		permeability: fittedPermeability(content, model, kept)
+		leftOut
 	};
 }
 
 type Model = ReturnType<typeof specModel>;
 
-function usableCoil(model: Model, content: SpecContent, reading: KeptReading): KeptCoil | LeftOutWhy {
+interface Candidate {
+	reading: KeptReading;
+	coil: KeptCoil;
+	/** Measured over modelled. */
+	ratio: number;
+}
+
+/** Those that most of the others contradict; none where that would be half of them or more. */
+function farFromRest(candidates: readonly Candidate[]): readonly Candidate[] {
+	if (candidates.length < restCoilsMin) return [];
+	const middle = median(candidates.map(({ ratio }) => ratio));
+	const far = candidates.filter(({ ratio, coil }) => {
+		const own = (coverage * coil.uncertaintyOhm) / coil.ohmAt20C;
+		return Math.abs(ratio / middle - 1) > apartFromRestMax + own;
+	});
+	return 2 * far.length < candidates.length ? far : [];
+}
+
+function median(values: readonly number[]): number {
+	const sorted = values.toSorted((a, b) => a - b);
+	const half = sorted.length / 2;
+	return (sorted[Math.ceil(half) - 1]! + sorted[Math.floor(half)]!) / 2;
+}
+
+function usableCoil(
+	model: Model,
+	content: SpecContent,
+	reading: KeptReading
+): { coil: KeptCoil; ratio: number } | LeftOutWhy {
 	if (!sameFigures(content, reading)) return 'other-figures';
 	if (reading.open) return 'open-or-short';
 	if (reading.ohmAt20C === null) return 'no-resistance';
@@ -118,17 +192,15 @@ function usableCoil(model: Model, content: SpecContent, reading: KeptReading): K
 	const refused = windCoil({ ...model, turns, temperatureC: usualTemperatureC });
 	if (!refused.ok) return refused.field === 'turns' ? 'too-far' : 'spec-refused';
 	const modelled = modelOhm(model, [turns], 'single', usualTemperatureC);
-	const verdict = judge(
-		{ ohm: ohmAt20C, uncertaintyOhm },
-		{ ohm: modelled, uncertaintyOhm: modelled * modelUncertainty(model, [turns], 'single') }
-	);
+	// Open and short are many times off: how sure the model is does not matter.
+	const verdict = judge({ ohm: ohmAt20C, uncertaintyOhm }, { ohm: modelled, uncertaintyOhm: 0 });
 	if (!verdict.ok) return 'spec-refused';
 	if (verdict.value.agreement === 'open' || verdict.value.agreement === 'short') return 'open-or-short';
 	const coil: KeptCoil = { turns: [turns], connection: 'single', ohmAt20C, uncertaintyOhm, meterOhm };
-	const alone = calibrate(model, [coil]);
-	if (alone.ok) return coil;
-	if (alone.field.endsWith('.ohmAt20C')) return 'too-far';
-	return alone.field.startsWith('kept') ? 'too-unsure' : 'spec-refused';
+	const unfit = keptRefused(model, [coil]);
+	if (!unfit) return { coil, ratio: ohmAt20C / modelled };
+	if (unfit.field.endsWith('.ohmAt20C')) return 'too-far';
+	return unfit.field.startsWith('kept') ? 'too-unsure' : 'spec-refused';
 }
 
 /** The bobbin of the coil and the spec's are one as far as a core can be measured. */
