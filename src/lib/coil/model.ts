@@ -83,6 +83,9 @@ export function windingInputs(model: CoilModel): Input<WindingInput>[] {
 	];
 }
 
+/** So many values `atValues` takes. */
+export const windingInputCount = 5;
+
 /** The model with other values of its inputs. */
 export function atValues(model: CoilModel, values: readonly number[]): CoilModel {
 	const [diameterM = 0, overallDiameterM = 0, ohmPerMFactor = 1, packing = 0, bobbinFactor = 1] = values;

@@ -5,7 +5,7 @@ import { calibrate } from './calibrate.ts';
 import { airInductanceH, inductanceRatio, mutualBesideH } from './inductance.ts';
 import { halfWidthsOf } from './model.ts';
 import { joinedHenry } from './pickup.ts';
-import { calibratedPermeabilityPart, predict, type PredictionInput } from './predict.ts';
+import { calibratedPermeabilityPart, predict, predictResistance, type PredictionInput } from './predict.ts';
 import type { Result } from './refuse.ts';
 import { coilCapacitanceF, peakOf, usualLoad } from './response.ts';
 import { propagate, type Uncertain } from './uncertainty.ts';
@@ -77,6 +77,22 @@ describe('a prediction', () => {
 		expect(along!.mutualAirH).toBe(-against!.mutualAirH);
 		expect(along!.figures.inductanceH.value).toBeLessThan(against!.figures.inductanceH.value);
 	});
+
+	it.each(['series', 'parallel', 'single'] as const)(
+		'has the same resistance alone as with all the rest, %s',
+		(joined) => {
+			const own = { ...input, connection: joined, turns: joined === 'single' ? [4950] : [4950, 4850] };
+			const kept = { turns: [4950], connection: 'single' as const, ohmAt20C: 3800, uncertaintyOhm: 12, meterOhm: 8 };
+			for (const calibration of [null, value(calibrate(input, [kept]))]) {
+				const whole = value(predict({ ...own, calibration })).figures.resistanceOhm;
+				const alone = value(predictResistance({ ...own, calibration }));
+				expect(alone.value).toBeCloseTo(whole.value, 9);
+				expect(alone.uncertainty).toBeCloseTo(whole.uncertainty, 9);
+				expect(alone.parts.map(({ name }) => name)).toEqual(whole.parts.map(({ name }) => name));
+			}
+			expect(predictResistance({ ...own, turns: [0] })).toMatchObject({ ok: false, field: 'turns[0]' });
+		}
+	);
 
 	it('says what contributes, the most first', () => {
 		const { figures, peakHz, peakDb } = value(predict(input));

@@ -5,6 +5,8 @@ import {
 	atValues,
 	halfWidthsOf,
 	halfWidthsRefused,
+	modelOhm,
+	windingInputCount,
 	windingInputs,
 	type CoilModel,
 	type WindingInput
@@ -94,12 +96,57 @@ const windowOf = (model: CoilModel, coil: Coil): Window => ({
 const pickupCoilF = (packing: number, count: number, connection: Connection): number =>
 	coilCapacitanceF(packing) * (connection === 'parallel' ? count : 1);
 
+/** What a resistance depends on, with uncertainties; `resistanceAt` takes their values in this order. */
+function resistanceInputs(input: PredictionInput): Input<Contribution>[] {
+	const calibration = input.calibration ?? null;
+	return [
+		...windingInputs(input),
+		{
+			name: 'temperature',
+			value: input.temperatureC,
+			uncertainty: halfWidthsOf(input).temperatureC / Math.sqrt(3)
+		},
+		{
+			name: 'calibration',
+			value: 1,
+			uncertainty: calibration ? calibration.keptUncertainty * calibration.keptShare : 0
+		},
+		{ name: 'scatter', value: 1, uncertainty: calibration?.scatter ?? scatterPrior }
+	];
+}
+
+/** The model, its temperature and the scale over its resistances, at other values of the inputs. */
+function resistanceAt(input: PredictionInput, values: readonly number[]) {
+	const { calibration } = input;
+	const model = atValues(input, values);
+	const [celsius = 20, calibrated = 1, scattered = 1] = values.slice(windingInputCount);
+	return { model, celsius, scale: (calibration ? scaleAt(calibration, model) : 1) * calibrated * scattered };
+}
+
+/**
+ * The resistance of `predict` without the rest of it, which takes a hundred times as long: for lists, and for coils that
+ * are wound. Coils joined as they are.
+ */
+export function predictResistance(
+	input: Omit<PredictionInput, 'effectivePermeability' | 'load'>
+): Result<Uncertain<Contribution>> {
+	const whole: PredictionInput = { ...input, effectivePermeability: null, load: null };
+	const refused = predictionRefused(whole);
+	if (refused) return refused;
+	const { ohm } = propagate(resistanceInputs(whole), (values) => {
+		const { model, celsius, scale } = resistanceAt(whole, values);
+		const ohms = whole.turns.map((count) => modelOhm(model, [count], 'single', celsius) * scale);
+		return { ohm: joinedOhm(ohms, whole.connection) };
+	});
+	// A resistance is there at any values.
+	return ok(ohm!);
+}
+
 /** The whole prediction, each figure with its standard uncertainty and what that comes from. */
 export function predict(input: PredictionInput): Result<Prediction> {
 	const refused = predictionRefused(input);
 	if (refused) return refused;
 	const { turns, connection, temperatureC, load } = input;
-	const calibration = input.calibration ?? null;
 	const half = halfWidthsOf(input);
 	const third = Math.sqrt(3);
 
@@ -132,15 +179,8 @@ export function predict(input: PredictionInput): Result<Prediction> {
 	}
 	const coupling = mutualAirH === 0 ? 0 : mutualAirH / Math.sqrt(air[0]! * air[1]!);
 
-	const windingNames = windingInputs(input);
+	const resistanceNames = resistanceInputs(input);
 	const rest: Input<Contribution>[] = [
-		{ name: 'temperature', value: temperatureC, uncertainty: half.temperatureC / third },
-		{
-			name: 'calibration',
-			value: 1,
-			uncertainty: calibration ? calibration.keptUncertainty * calibration.keptShare : 0
-		},
-		{ name: 'scatter', value: 1, uncertainty: calibration?.scatter ?? scatterPrior },
 		{ name: 'air', value: 1, uncertainty: half.airPart / third },
 		{
 			name: 'permeability',
@@ -153,14 +193,12 @@ export function predict(input: PredictionInput): Result<Prediction> {
 		{ name: 'coilCapacitance', value: 1, uncertainty: load ? half.coilCapacitancePart / third : 0 },
 		{ name: 'losses', value: 0, uncertainty: load ? half.lossesDb / third : 0 }
 	];
-	const inputs: Input<Contribution>[] = [...windingNames, ...rest];
+	const inputs = [...resistanceNames, ...rest];
 
 	const figures = (values: readonly number[]) => {
-		const model = atValues(input, values);
-		const [celsius = 20, calibrated = 1, scattered = 1, evenness = 1, permeability = 1, capacitance = 1, losses = 0] =
-			values.slice(windingNames.length);
+		const { model, celsius, scale } = resistanceAt(input, values);
+		const [evenness = 1, permeability = 1, capacitance = 1, losses = 0] = values.slice(resistanceNames.length);
 		const now = wind(model, celsius);
-		const scale = (calibration ? scaleAt(calibration, model) : 1) * calibrated * scattered;
 		const henries = now.map((coil, i) => {
 			const moved = inductanceRatio(wound[i]!.window, windowOf(model, coil));
 			return evenness * air[i]! * (moved.ok ? moved.value : 1);

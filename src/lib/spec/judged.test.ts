@@ -63,7 +63,7 @@ describe('what a coil is expected to measure', () => {
 	});
 
 	it('is refused where turns make no sense', () => {
-		expect(expectedCoil(content, 100_000)).toMatchObject({ ok: false, field: 'turns' });
+		expect(expectedCoil(content, 100_000)).toMatchObject({ ok: false, field: 'turns[0]' });
 	});
 });
 

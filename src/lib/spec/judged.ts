@@ -1,5 +1,5 @@
 import { expectedBand, judge, type Agreement, type Band, type Expected, type Verdict } from '../coil/band.ts';
-import { scaleAt, scatterPrior, type Calibration } from '../coil/calibrate.ts';
+import type { Calibration } from '../coil/calibrate.ts';
 import { airInductanceH, permeabilityFrom } from '../coil/inductance.ts';
 import { to20C } from '../coil/wire.ts';
 import {
@@ -10,10 +10,9 @@ import {
 	type At20C,
 	type MeterRange
 } from '../coil/measurement.ts';
-import { atValues, halfWidthsRefused, modelOhm, windingInputs } from '../coil/model.ts';
-import type { Contribution } from '../coil/predict.ts';
+import { predictResistance, type Contribution } from '../coil/predict.ts';
 import { ok, type Result } from '../coil/refuse.ts';
-import { propagate, type Input, type Uncertain } from '../coil/uncertainty.ts';
+import type { Uncertain } from '../coil/uncertainty.ts';
 import { packingFromWidth, windCoil } from '../coil/winding.ts';
 import type { SpecContent, SpecWire } from './content.ts';
 import { specModel, usualTemperatureC } from './model.ts';
@@ -71,30 +70,19 @@ export function expectedCoil(
 	{ wire = null, calibration = null }: { wire?: SpecWire | null; calibration?: Calibration | null } = {}
 ): Result<ExpectedCoil> {
 	const model = specModel(content, wire);
-	const wound = windCoil({ ...model, turns, temperatureC: usualTemperatureC });
-	if (!wound.ok) return wound;
-	const refused = halfWidthsRefused(model);
-	if (refused) return refused;
-	const winding = windingInputs(model);
-	const inputs: Input<Contribution>[] = [
-		...winding,
-		{
-			name: 'calibration',
-			value: 1,
-			uncertainty: calibration ? calibration.keptUncertainty * calibration.keptShare : 0
-		},
-		{ name: 'scatter', value: 1, uncertainty: calibration?.scatter ?? scatterPrior }
-	];
-	const { ohm } = propagate(inputs, (values) => {
-		const moved = atValues(model, values);
-		const [calibrated = 1, scattered = 1] = values.slice(winding.length);
-		const scale = (calibration ? scaleAt(calibration, moved) : 1) * calibrated * scattered;
-		return { ohm: modelOhm(moved, [turns], 'single', usualTemperatureC) * scale };
+	const predicted = predictResistance({
+		...model,
+		halfWidths: { ...model.halfWidths, temperatureC: 0 },
+		turns: [turns],
+		connection: 'single',
+		temperatureC: usualTemperatureC,
+		calibration
 	});
-	// A resistance is there at any values.
-	const expected = { ohm: ohm!.value, uncertaintyOhm: ohm!.uncertainty };
+	if (!predicted.ok) return predicted;
+	const { value: ohm, uncertainty: uncertaintyOhm, parts } = predicted.value;
+	const expected = { ohm, uncertaintyOhm };
 	const band = expectedBand(expected);
-	return band.ok ? ok({ ...expected, ...band.value, parts: ohm!.parts }) : band;
+	return band.ok ? ok({ ...expected, ...band.value, parts }) : band;
 }
 
 /** Whether a reading agrees with what was expected. */

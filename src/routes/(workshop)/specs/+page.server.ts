@@ -7,7 +7,7 @@ import { listSpools } from '$lib/server/db/spools';
 import { listSpecs, putAway, type SpecSummary } from '$lib/server/db/specs';
 import type { SpecWire } from '$lib/spec/content';
 import { kindLabels } from '$lib/spec/form';
-import { predictSpec } from '$lib/spec/model';
+import { predictSpecResistance } from '$lib/spec/model';
 import { wireWords } from '$lib/spec/wire-form';
 import { plusMinus } from '$lib/spec/words';
 import type { UnitPreference } from '$lib/coil/units';
@@ -50,8 +50,8 @@ const rowIn = (units: UnitPreference, spools: ReadonlyMap<string, SpecWire>) => 
 	const { content } = spec;
 	const wire = (content.spoolId !== null && spools.get(content.spoolId)) || null;
 	// By the model and the spool: what kept coils add to that stands on the spec's own page.
-	const predicted = predictSpec(content, { wire });
-	const ohm = predicted.ok ? predicted.value.figures.resistanceOhm : null;
+	const predicted = predictSpecResistance(content, { wire });
+	const ohm = predicted.ok ? predicted.value : null;
 	return {
 		id: spec.id,
 		name: spec.name,
