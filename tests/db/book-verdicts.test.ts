@@ -188,12 +188,44 @@ describe('a line of the book', () => {
 
 describe('what a run’s page says', () => {
 	it('narrows what is expected with the kept coils of its bobbin and spool', async () => {
-		const { expected, plain, calibration } = await measured(runs.unread);
+		const { expected, plain, calibration, leftOut } = await measured(runs.unread);
 		expect(calibration?.used.map(({ runId }) => runId).sort()).toEqual([runs.first, runs.second].sort());
-		expect(calibration?.leftOut).toBe(2);
+		expect(leftOut.map(({ runId }) => runId).sort()).toEqual([runs.open, runs.short].sort());
 		expect(calibration?.scale).toBeGreaterThan(1.02);
 		expect(expected!.uncertaintyOhm).toBeLessThan(plain!.uncertaintyOhm);
 		expect(Math.abs(expected!.ohm - truth(turns))).toBeLessThan(0.01 * truth(turns));
+	});
+
+	it('says of a coil far from the rest that it teaches them nothing, and the lines of the book agree', async () => {
+		const [plenty, shorted] = [await wind({ name: 'plenty' }), await wind({ name: 'shorted' })];
+		await read(plenty, 0.999 * truth(turns));
+		await read(shorted, 0.8 * truth(turns));
+		const page = await measured(shorted);
+		expect(page.teachesNot).toBe('far-from-rest');
+		expect(page.calibration?.used).toHaveLength(3);
+		expect((await measured(plenty)).teachesNot).toBeNull();
+		const { leftOut } = await measured(runs.unread);
+		expect(leftOut).toContainEqual(expect.objectContaining({ runId: shorted, why: 'far-from-rest' }));
+		for (const [id, agreement] of [
+			[plenty, 'within'],
+			[shorted, 'below']
+		] as const) {
+			const { expected } = await measured(id);
+			const shown = (await book()).find((one) => one.id === id)!;
+			expect(shown.predicted).toEqual({ ohm: expected!.ohm, uncertaintyOhm: expected!.uncertaintyOhm });
+			expect(shown.agreement).toBe(agreement);
+		}
+	});
+
+	it('expects of coils without a spool what their own turns come to', async () => {
+		const [one, other] = [await wind({ spool: false }), await wind({ spool: false, onBobbin: turns + 3 })];
+		const lines = await book();
+		const of = (id: string) => lines.find((line) => line.id === id)?.predicted;
+		for (const id of [one, other]) {
+			const { expected } = await measured(id);
+			expect(of(id)).toEqual({ ohm: expected!.ohm, uncertaintyOhm: expected!.uncertaintyOhm });
+		}
+		expect(of(other)!.ohm).toBeGreaterThan(of(one)!.ohm);
 	});
 
 	it('says what a width and an inductance mean', async () => {

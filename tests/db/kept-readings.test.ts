@@ -80,7 +80,7 @@ const read = (runId: string, more: Partial<Insertable<ReadingTable>>) =>
 			.execute()
 	);
 
-const kept = (more: { bobbinName?: string; spoolId?: string | null; exceptRunId?: string } = {}) =>
+const kept = (more: { bobbinName?: string; spoolId?: string | null } = {}) =>
 	here((trx) => keptReadings(trx, shop.id, { bobbinName: content.bobbin.name, spoolId, ...more }));
 
 describe('kept coils to learn from', () => {
@@ -123,11 +123,6 @@ describe('kept coils to learn from', () => {
 		expect(await kept({ spoolId: null })).toEqual([]);
 		expect(await kept({ spoolId: 'no-id' })).toEqual([]);
 		expect(await kept({ spoolId: green })).toHaveLength(2);
-	});
-
-	it('leave out the run that is asked about', async () => {
-		const [screw = '', slug = ''] = await wound(content);
-		expect((await kept({ exceptRunId: slug })).map(({ runId }) => runId)).toEqual([screw]);
 	});
 
 	it('are not another workshop’s, even by its own spool', async () => {

@@ -2,6 +2,7 @@ import { sql, type Expression, type SqlBool, type Transaction } from 'kysely';
 import type { BookFilter, BookSort, BookState } from '../../book-filter.ts';
 import { copperAlphaPerK } from '../../coil/wire.ts';
 import type { ResistanceRead } from '../../spec/judged.ts';
+import { resistanceRead } from './readings.ts';
 import type { Database } from './schema.ts';
 
 /** One line of the bench book: a run that is kept or set aside. */
@@ -156,16 +157,7 @@ export async function listBook(
 				? { id: row.spec_id, no: row.spec_revision_no, name: row.spec_name ?? '' }
 				: null,
 		spoolId: row.spool_id,
-		read:
-			row.reading_stage === null
-				? null
-				: {
-						ohm: row.value,
-						temperatureC: row.temperature_c ?? 20,
-						temperatureHalfWidthC: row.temperature_half_width_c ?? 0,
-						range: row.meter_range,
-						halfWidthOhm: row.half_width
-					}
+		read: row.reading_stage === null ? null : resistanceRead(row)
 	}));
 }
 

@@ -1,5 +1,6 @@
 import { sql, type Selectable, type Transaction } from 'kysely';
 import type { MeterRange } from '../../coil/measurement.ts';
+import type { ResistanceRead } from '../../spec/judged.ts';
 import { canonicalId, isUuid } from './ids.ts';
 import type { Database, ReadingKind, ReadingStage, ReadingTable } from './schema.ts';
 
@@ -220,6 +221,21 @@ export async function neighboursOf(
 		stage: row.stage
 	}));
 }
+
+/** A row of resistance as the computation takes it. */
+export const resistanceRead = (
+	row: Pick<
+		Selectable<ReadingTable>,
+		'value' | 'temperature_c' | 'temperature_half_width_c' | 'meter_range' | 'half_width'
+	>
+): ResistanceRead => ({
+	ohm: row.value,
+	// Of a resistance both are known.
+	temperatureC: row.temperature_c ?? 20,
+	temperatureHalfWidthC: row.temperature_half_width_c ?? 0,
+	range: row.meter_range,
+	halfWidthOhm: row.half_width
+});
 
 function readings(trx: Trx, workshopId: string) {
 	return trx

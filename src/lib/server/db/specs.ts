@@ -1,10 +1,11 @@
 import { sql, type Selectable, type Transaction } from 'kysely';
-import { readingTo20C, type MeterRange } from '../../coil/measurement.ts';
 import { specContent, type SpecCoil, type SpecContent } from '../../spec/content.ts';
+import { readAt20C } from '../../spec/judged.ts';
 import type { KeptReading } from '../../spec/kept.ts';
 import { fullTurnsOf } from '../../spec/model.ts';
 import { addCoil, coilLimits, type Coil } from './coils.ts';
 import { isUuid } from './ids.ts';
+import { resistanceRead } from './readings.ts';
 import type { Database, ReadingTable } from './schema.ts';
 import { findSpool } from './spools.ts';
 
@@ -256,6 +257,7 @@ export async function windSpec(
 		.where('no', '=', no)
 		.execute();
 	const { content } = revision;
+	const fullTurns = fullTurnsOf(content, spool?.wire ?? null);
 	const coils: Coil[] = [];
 	for (let pickup = 0; pickup < pickups; pickup += 1) {
 		for (const [i, coil] of content.coils.entries()) {
@@ -276,7 +278,7 @@ export async function windSpec(
 					spec: { id: specId, no, coil: i },
 					spoolId,
 					firstLook: content.looks.first,
-					fullTurns: fullTurnsOf(content, spool?.wire ?? null)
+					fullTurns
 				}
 			);
 			coils.push(added);
@@ -312,10 +314,10 @@ export async function putAway(
 export async function keptReadings(
 	trx: Trx,
 	workshopId: string,
-	{ bobbinName, spoolId, exceptRunId }: { bobbinName: string; spoolId: string | null; exceptRunId?: string }
+	{ bobbinName, spoolId }: { bobbinName: string; spoolId: string | null }
 ): Promise<KeptReading[]> {
 	if (spoolId === null || !isUuid(spoolId)) return [];
-	let query = trx
+	const runs = await trx
 		.selectFrom('run')
 		.innerJoin('spec_revision as r', (join) =>
 			join
@@ -328,9 +330,11 @@ export async function keptReadings(
 		.where('run.state', '=', 'kept')
 		.where('run.on_bobbin', '>=', 1)
 		.where('run.spool_id', '=', spoolId)
-		.where(sql<boolean>`lower(btrim(r.content #>> '{bobbin,name}')) = lower(btrim(${bobbinName}))`);
-	if (exceptRunId !== undefined && isUuid(exceptRunId)) query = query.where('run.id', '<>', exceptRunId);
-	const runs = await query.orderBy('run.ended_at', 'desc').orderBy('run.id', 'desc').limit(keptReadingsMax).execute();
+		.where(sql<boolean>`lower(btrim(r.content #>> '{bobbin,name}')) = lower(btrim(${bobbinName}))`)
+		.orderBy('run.ended_at', 'desc')
+		.orderBy('run.id', 'desc')
+		.limit(keptReadingsMax)
+		.execute();
 	if (runs.length === 0) return [];
 	const readings = await trx
 		.selectFrom('reading')
@@ -372,10 +376,6 @@ export async function keptReadings(
 	});
 }
 
-/** Of a reading without a meter: part of it, either way. Common practice, no source. */
-const unknownMeterPercent = 1;
-/** Of a temperature nobody gave a width for, either way. Common practice, no source. */
-const temperatureHalfWidthC = 2;
 /** Of a caliper on a coil, which gives way under its jaws. Common practice, no source. */
 const widthHalfWidthM = 0.0001;
 
@@ -384,24 +384,13 @@ function resistanceOf(
 ): Pick<KeptReading, 'ohmAt20C' | 'open' | 'uncertaintyOhm' | 'meterOhm'> {
 	const none = { ohmAt20C: null, open: false, uncertaintyOhm: 0, meterOhm: 0 };
 	if (!reading) return none;
-	if (reading.value === null) return { ...none, open: true };
-	const at20C = readingTo20C(
-		reading.value,
-		reading.temperature_c ?? 20,
-		reading.temperature_half_width_c ?? temperatureHalfWidthC,
-		reading.meter_range ?? rangeOfHalfWidth(reading.half_width)
-	);
-	// Next to nothing, or beyond any coil: told as it is, to be known for a short or an open coil.
+	const at20C = readAt20C(resistanceRead(reading));
+	// Beyond any coil: told as it is, to be known for an open one.
 	if (!at20C.ok) return at20C.field === 'ohm' ? { ...none, ohmAt20C: reading.value } : none;
+	if (at20C.value === null) return { ...none, open: true };
 	const { ohm, uncertaintyOhm, meterOhm } = at20C.value;
 	return { ohmAt20C: ohm, open: false, uncertaintyOhm, meterOhm };
 }
-
-/** One count as wide as the reading may be off, so that it takes the same way as a meter's. */
-const rangeOfHalfWidth = (halfWidth: number | null): MeterRange =>
-	halfWidth === null
-		? { upToOhm: Infinity, percent: unknownMeterPercent, counts: 0, ohmPerCount: 0 }
-		: { upToOhm: Infinity, percent: 0, counts: 1, ohmPerCount: halfWidth };
 
 const isRevisionNo = (no: number): boolean => Number.isInteger(no) && no >= 1 && no <= 10_000;
 

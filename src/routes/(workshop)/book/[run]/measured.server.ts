@@ -17,7 +17,7 @@ import {
 	type ExpectedCoil,
 	type Side
 } from '../../../../lib/spec/judged.ts';
-import { calibrationOf } from '../../../../lib/spec/kept.ts';
+import { keptWithout, resistanceSay, type KeptSay, type LeftOutWhy } from '../../../../lib/spec/kept.ts';
 import { predictCoil } from '../../../../lib/spec/model.ts';
 
 /** Everything a run's page says of what its coil should measure, and of what it did. SI. */
@@ -68,17 +68,20 @@ export async function measuredOf(trx: Trx, workshopId: string, run: Run) {
 		scale: number;
 		uncertainty: number;
 		used: { runId: string; sticker: string; turns: number; ratio: number; share: number }[];
-		leftOut: number;
 	} | null = null;
+	let leftOut: KeptSay['leftOut'] = [];
+	let teachesNot: LeftOutWhy | null = null;
 	let outerWidthM: { value: number; uncertainty: number } | null = null;
 	let inductanceH: { value: number; uncertainty: number } | null = null;
 	if (content && turns !== null && turns >= 1) {
 		const kept = await keptReadings(trx, workshopId, {
 			bobbinName: content.bobbin.name,
-			spoolId: run.spoolId,
-			exceptRunId: run.id
+			spoolId: run.spoolId
 		});
-		const say = calibrationOf(content, wire, kept);
+		// A coil never speaks for itself.
+		const say = resistanceSay(content, wire, keptWithout(kept, run.id));
+		leftOut = say.leftOut.filter(({ why }) => why !== 'no-resistance');
+		teachesNot = resistanceSay(content, wire, kept).leftOut.find(({ runId }) => runId === run.id)?.why ?? null;
 		const by = expectedCoil(content, turns, { wire, calibration: say.calibration });
 		if (by.ok) expected = by.value;
 		else refused = by;
@@ -94,8 +97,7 @@ export async function measuredOf(trx: Trx, workshopId: string, run: Run) {
 					turns: wound,
 					ratio,
 					share
-				})),
-				leftOut: say.leftOut.filter(({ why }) => why !== 'no-resistance').length
+				}))
 			};
 		}
 		const all = predictCoil(content, turns, { wire });
@@ -161,6 +163,10 @@ export async function measuredOf(trx: Trx, workshopId: string, run: Run) {
 		plain: plain && { ohm: plain.ohm, uncertaintyOhm: plain.uncertaintyOhm },
 		refused,
 		calibration,
+		/** Other kept coils that were measured and teach this one nothing. */
+		leftOut,
+		/** Why this coil teaches the others nothing; null: it does, or is not asked to. */
+		teachesNot,
 		outerWidthM: outerWidthM && { value: outerWidthM.value, uncertainty: outerWidthM.uncertainty },
 		inductanceH: inductanceH && { value: inductanceH.value, uncertainty: inductanceH.uncertainty },
 		readings,
