@@ -38,16 +38,9 @@ export interface Side {
 	spoolName: string | null;
 }
 
-export interface SpecFieldText {
-	group: string;
-	/** Where it stands in the content: `bobbin.traverseM`, `coils.0.turns`. */
-	key: string;
-	label: string;
-	text: string;
-}
-
 interface FieldKind {
 	group: string;
+	/** Where it stands in the content: `bobbin.traverseM`, `coils.0.turns`. */
 	key: string;
 	label: string;
 	/** What makes it another one. */
@@ -285,25 +278,6 @@ function fieldKinds(units: UnitPreference, coils: number): FieldKind[] {
 	part('Load', 'load', ['lossOhm'], specLabels.loss, ({ lossOhm }, d) => told(measures.loss, lossOhm, d));
 	top('Notes', 'notes', specLabels.notes, words);
 	return fields;
-}
-
-/**
- * Every field of a spec in words, in the order of the form, for a page that only shows them.
- *
- * @param spoolName of the chosen spool, which the content knows by its id alone
- */
-export function specFields(
-	content: SpecContent,
-	units: UnitPreference,
-	spoolName: string | null = null
-): SpecFieldText[] {
-	const side: Side = { content, spoolWire: null, spoolName };
-	return fieldKinds(units, content.coils.length).map(({ group, key, label, text }) => ({
-		group,
-		key,
-		label,
-		text: text(side, usualDigits) ?? nothingSaid
-	}));
 }
 
 /** How a difference stands to what two coils wound alike differ by of themselves; null: nothing is known of that. */
