@@ -200,7 +200,12 @@ export class Bridge {
 	#acked(b: string, n: number, e: number): void {
 		this.#sender.acked(b, e);
 		const mark = this.#spool.boots.of(b);
-		if (!mark || (n <= mark.n && e <= mark.e)) return;
+		if (mark && n <= mark.n && e <= mark.e) return;
+		if (!mark) {
+			// Not one line of this boot could be kept here.
+			if (b === this.#boot) this.#port.write([formatLine({ verb: 'ACK', b, n, e })]);
+			return;
+		}
 		this.#spool.boots.stored(b, n, e);
 		if (b === this.#boot) this.#acknowledge();
 	}

@@ -59,6 +59,26 @@ afterEach(async () => {
 	rmSync(folder, { recursive: true, force: true });
 });
 
+/** A disk of two megabytes; only root, on a machine that lets it, has one to give. */
+function mountSmallDisk(on: string): boolean {
+	mkdirSync(on, { recursive: true });
+	try {
+		execFileSync('mount', ['-t', 'tmpfs', '-o', 'size=2m', 'tmpfs', on], { stdio: 'ignore' });
+		return true;
+	} catch {
+		return false;
+	}
+}
+const unmount = (disk: string) => execFileSync('umount', ['--lazy', disk]);
+
+function canMount(): boolean {
+	const tried = mkdtempSync(join(tmpdir(), 'turnstead-mount-'));
+	const mounted = mountSmallDisk(tried);
+	if (mounted) unmount(tried);
+	rmSync(tried, { recursive: true });
+	return mounted;
+}
+
 const pause = (ms: number) => new Promise((resolve) => setTimeout(resolve, ms));
 const port = () => join(folder, 'winder');
 
@@ -155,40 +175,42 @@ describe('a bridge between a cable and the server', () => {
 		roundMsMax
 	);
 
-	it(
-		'on a full disk acknowledges nothing it could lose, and goes on when there is room',
-		async () => {
-			const disk = join(folder, 'disk');
-			mkdirSync(disk);
-			execFileSync('mount', ['-t', 'tmpfs', '-o', 'size=2m', 'tmpfs', disk]);
-			try {
-				bridge = newBridge('ws', ['--spool', join(disk, 'spool'), '--spool-max', '1']);
-				const simulation = wind(firstSeed + 1);
-				await bridge.start();
-				const { device } = simulation.winders[0]!;
-				await until(() => device.plan !== null);
-				await server.kill();
-				// Another program fills the disk.
-				writeFileSync(join(disk, 'other'), Buffer.alloc(1_900 * 1024));
-				await until(() => bridge!.output().includes('The disk is full.'));
-				const before = device.lastEvent;
-				await until(() => device.lastEvent >= before + 3);
-				expect(device.ring.events.length, 'the winder keeps them').toBeGreaterThanOrEqual(3);
-				rmSync(join(disk, 'other'));
-				await until(() => bridge!.output().includes('The spool takes lines again.'));
-				await server.start();
-				const result = await simulation.done;
-				await caughtUp();
-				expect(await bridge.stop()).toBe(0);
-				bridge = null;
-				await expectTruth(server, winder, result.winders[0]!);
-			} finally {
-				await bridge?.kill();
-				execFileSync('umount', ['--lazy', disk]);
-			}
-		},
-		roundMsMax
-	);
+	// The unit tests of the spool have a disk that refuses in its place.
+	if (!canMount()) console.warn('No small disk can be mounted here: the round on a full disk is not run.');
+	else
+		it(
+			'on a full disk acknowledges nothing it could lose, and goes on when there is room',
+			async () => {
+				const disk = join(folder, 'disk');
+				expect(mountSmallDisk(disk)).toBe(true);
+				try {
+					bridge = newBridge('ws', ['--spool', join(disk, 'spool'), '--spool-max', '1']);
+					const simulation = wind(firstSeed + 1);
+					await bridge.start();
+					const { device } = simulation.winders[0]!;
+					await until(() => device.plan !== null);
+					await server.kill();
+					// Another program fills the disk.
+					writeFileSync(join(disk, 'other'), Buffer.alloc(1_900 * 1024));
+					await until(() => bridge!.output().includes('The disk is full.'));
+					const before = device.lastEvent;
+					await until(() => device.lastEvent >= before + 3);
+					expect(device.ring.events.length, 'the winder keeps them').toBeGreaterThanOrEqual(3);
+					rmSync(join(disk, 'other'));
+					await until(() => bridge!.output().includes('The spool takes lines again.'));
+					await server.start();
+					const result = await simulation.done;
+					await caughtUp();
+					expect(await bridge.stop()).toBe(0);
+					bridge = null;
+					await expectTruth(server, winder, result.winders[0]!);
+				} finally {
+					await bridge?.kill();
+					unmount(disk);
+				}
+			},
+			roundMsMax
+		);
 
 	it('is one to a spool: a second is told which process has it', async () => {
 		bridge = newBridge('ws');
