@@ -1,7 +1,7 @@
 /* The plan the device holds, and the cues it calls by itself. Marks are turns of the coil, counted from the plan's zero. */
 #include "internal.h"
 
-/* A plan never holds a number above turnsMax, so turns and marks add up within 32 bits. */
+/* Targets and what is early before them never exceed turnsMax, so turns and marks add up within 32 bits. */
 static uint32_t at_most(uint32_t value, uint32_t most)
 {
 	return value < most ? value : most;
@@ -31,7 +31,10 @@ static int well_below(int32_t turns, uint32_t mark)
 	return turns + (int32_t)rearmTurns <= (int32_t)mark;
 }
 
-/* The first look beyond `done`, or 0 when none is left below the ease mark: so near the end the stop is the look. */
+/*
+ * The first look beyond `done`, or 0 when none is left below the ease mark: so near the end the stop is the look. No
+ * interval is too large to add up: done lies below 2^31, and the sum is at most done and one interval, or done twice.
+ */
 static uint32_t next_look(const struct turnline_plan *plan)
 {
 	uint32_t next = 0;
@@ -71,9 +74,8 @@ int plan_set(struct turnline *winder, const struct command *set)
 	half = target - target / 2;
 	plan->from = set->from;
 	plan->target = target;
-	/* An interval beyond the target calls nothing, and would not add up. */
-	plan->look = set->look > target ? 0 : set->look;
-	plan->first = set->first > target ? 0 : set->first;
+	plan->look = set->look;
+	plan->first = set->first;
 	plan->stop_early = at_most(set->stop, target);
 	plan->stop_at = at_least(target - plan->stop_early, half);
 	plan->ease_at = at_least(target - at_least(at_most(set->ease, target), plan->stop_early), half);

@@ -212,6 +212,33 @@ describe('cues called by the device', () => {
 			expect(marksOf((await board.mark()).events)).toEqual([['at', 50]]);
 		}));
 
+	it('a look that was stood at is taken: the lamp goes out and the next is ahead', () =>
+		withBoard([], async (board) => {
+			board.say(plan({ look: 40 }));
+			board.turns(38);
+			expect((await board.mark()).reports).toEqual(['cue look']);
+			board.wait(2000);
+			expect((await board.mark()).reports).toEqual(['cue none']);
+			board.turns(39);
+			const { events, reports } = await board.mark();
+			expect(marksOf(events)).toEqual([['look', 77]]);
+			expect(reports).toEqual(['cue look']);
+		}));
+
+	it('a look comes again when it was taken and the count falls well below where it is called', () =>
+		withBoard([], async (board) => {
+			board.say(plan({ look: 40 }));
+			board.turns(38);
+			board.wait(2000);
+			board.turns(6, 100, false);
+			board.turns(6);
+			await board.mark();
+			expect(marksOf([...board.events.values()])).toEqual([
+				['look', 37],
+				['look', 37]
+			]);
+		}));
+
 	it('a coil wound so that the net falls has its marks too', () =>
 		withBoard([], async (board) => {
 			board.turns(5);

@@ -188,6 +188,20 @@ describe('the count of the core', () => {
 			expect(lines.filter(isTick).at(-1)).not.toHaveProperty('x');
 		}));
 
+	it('pulses closer than half the shortest period are refused and told apart', () =>
+		withBoard(['--one-sensor', '--rpm-max', '1200'], async (board) => {
+			// At 1,200 a turn takes 50 ms: 24 ms is too close, 26 ms is not.
+			for (const ms of [24, 24, 26, 26]) {
+				board.order('levels 1');
+				board.nowMs += ms / 2;
+				board.order('levels 0');
+				board.nowMs += ms / 2;
+			}
+			board.wait(1500);
+			const { f, lines } = await board.mark();
+			expect([f, lines.filter(isTick).at(-1)!.x]).toEqual([3, 1]);
+		}));
+
 	it('after a long stand no wrap of that clock takes the first pulse for bouncing', () =>
 		withBoard(['--one-sensor', '--step', '20'], async (board) => {
 			board.order('levels 1');
