@@ -9,6 +9,7 @@ import {
 	addSpec,
 	findRevision,
 	findSpec,
+	listSpecChoices,
 	listSpecs,
 	pickupsAtOnceMax,
 	putAway,
@@ -236,6 +237,20 @@ describe('the list of specs', () => {
 		expect(list[0]!.content.coils[0]!.turns).toBe(5100);
 		expect(list[1]).toMatchObject({ name: 'Tall', no: 1, revisions: 1, made: 0, waiting: 0 });
 		expect((await found(bridge)).made).toBe(1);
+	});
+
+	it('to choose from has the latest name and bobbin of each, in the same order', async () => {
+		const [first, second] = [await add(), await add(startingSpec('one-coil', 'Evening neck'))];
+		const content = { ...evening(), name: 'Morning bridge', bobbin: { ...evening().bobbin, name: 'Maple form' } };
+		await save(first, on((await found(first)).latest, content, { asNew: true }));
+		const choices = await here((trx) => listSpecChoices(trx, shop.id));
+		expect(choices.map(({ id, no, name, bobbin }) => [id, no, name, bobbin.name])).toEqual([
+			[first, 2, 'Morning bridge', 'Maple form'],
+			[second, 1, 'Evening neck', startingSpec('one-coil', 'x').bobbin.name]
+		]);
+		await here((trx) => putAway(trx, shop.id, second, true));
+		expect((await here((trx) => listSpecChoices(trx, shop.id))).map(({ id }) => id)).toEqual([first]);
+		expect(await there((trx) => listSpecChoices(trx, other.id))).toEqual([]);
 	});
 
 	it('leaves out what was put away, which is not wound until it is taken out again', async () => {

@@ -123,6 +123,34 @@ export async function listSpecs(
 	}));
 }
 
+/** As much of a spec in use as choosing one takes. */
+export interface SpecChoice {
+	id: string;
+	/** Of the latest revision. */
+	no: number;
+	name: string;
+	bobbin: SpecContent['bobbin'];
+}
+
+/** Specs in use, the one saved last first. */
+export async function listSpecChoices(trx: Trx, workshopId: string): Promise<SpecChoice[]> {
+	const rows = await trx
+		.selectFrom('spec')
+		.innerJoin('spec_revision as r', (join) =>
+			join.onRef('r.workshop_id', '=', 'spec.workshop_id').onRef('r.spec_id', '=', 'spec.id')
+		)
+		.select(['spec.id', 'r.no', 'r.name', 'r.saved_at', sql<unknown>`r.content -> 'bobbin'`.as('bobbin')])
+		.distinctOn('spec.id')
+		.where('spec.workshop_id', '=', workshopId)
+		.where('spec.put_away_at', 'is', null)
+		.orderBy('spec.id')
+		.orderBy('r.no', 'desc')
+		.execute();
+	return rows
+		.sort((a, b) => b.saved_at.getTime() - a.saved_at.getTime())
+		.map(({ id, no, name, bobbin }) => ({ id, no, name, bobbin: specContent.shape.bobbin.parse(bobbin) }));
+}
+
 /** In use or put away. null: unknown or another workshop's. */
 export async function findSpec(trx: Trx, workshopId: string, specId: string): Promise<Spec | null> {
 	if (!isUuid(specId)) return null;

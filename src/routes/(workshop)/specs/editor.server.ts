@@ -1,7 +1,7 @@
 import type { UnitPreference } from '$lib/coil/units';
 import { inWorkshop } from '$lib/server/db/connect';
 import { findSpool, listSpools } from '$lib/server/db/spools';
-import { keptReadings, listSpecs } from '$lib/server/db/specs';
+import { keptReadings, listSpecChoices, type SpecChoice } from '$lib/server/db/specs';
 import type { KeptReading } from '$lib/spec/kept';
 import type { SpecContent, SpecWire } from '$lib/spec/content';
 
@@ -14,8 +14,10 @@ export interface EditorData {
 	spools: { id: string; name: string; wire: SpecWire; ended: boolean }[];
 	/** Kept coils of this bobbin and spool. */
 	kept: KeptReading[];
-	/** Other specs, the one saved last first: their bobbins to take, their response to compare. */
-	others: { id: string; name: string; content: SpecContent }[];
+	/** Other specs, the one saved last first: what they say is asked for when one is compared. */
+	others: { id: string; name: string }[];
+	/** The workshop's own bobbins as other specs have them, each name once; `id` of the spec. */
+	bobbins: { id: string; bobbin: SpecContent['bobbin'] }[];
 }
 
 export async function editorData(
@@ -24,6 +26,7 @@ export async function editorData(
 	content: SpecContent,
 	specId: string | null
 ): Promise<EditorData> {
+	const others = (await listSpecChoices(trx, workshopId)).filter(({ id }) => id !== specId);
 	const shelf = await listSpools(trx, workshopId);
 	const chosen = content.spoolId === null ? null : await findSpool(trx, workshopId, content.spoolId);
 	const spools = chosen?.endedAt ? [...shelf, chosen] : shelf;
@@ -31,14 +34,24 @@ export async function editorData(
 		units,
 		spools: spools.map(({ id, name, wire, endedAt }) => ({ id, name, wire, ended: endedAt !== null })),
 		kept: await keptReadings(trx, workshopId, { bobbinName: content.bobbin.name, spoolId: content.spoolId }),
-		others: (await listSpecs(trx, workshopId))
-			.filter(({ id }) => id !== specId)
-			.map(({ id, name, content: of }) => ({ id, name, content: of }))
+		others: others.map(({ id, name }) => ({ id, name })),
+		bobbins: ownBobbins(others)
 	};
+}
+
+function ownBobbins(specs: readonly SpecChoice[]): EditorData['bobbins'] {
+	const byName = new Map<string, EditorData['bobbins'][number]>();
+	for (const { id, bobbin } of specs) {
+		const key = bobbin.name.trim().toLowerCase();
+		if (bobbin.generic === null && !byName.has(key)) byName.set(key, { id, bobbin });
+	}
+	return [...byName.values()];
 }
 
 /** A spool that was chosen is still there; null: none was. The sentence for its field where it is not. */
 export async function spoolRefused(trx: Trx, workshopId: string, content: SpecContent): Promise<string | null> {
-	if (content.spoolId === null || (await findSpool(trx, workshopId, content.spoolId))) return null;
+	// In the one spelling of its id: pages find it by that.
+	if (content.spoolId === null || (await findSpool(trx, workshopId, content.spoolId))?.id === content.spoolId)
+		return null;
 	return 'Spool: there is no such spool in this workshop; choose another, or none yet. The rest was kept as typed.';
 }

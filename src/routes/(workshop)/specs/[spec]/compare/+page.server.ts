@@ -1,7 +1,7 @@
 import { error } from '@sveltejs/kit';
 import { guard } from '$lib/server/auth/guard';
 import { inWorkshop } from '$lib/server/db/connect';
-import { findRevision, findSpec, listSpecs, type Revision } from '$lib/server/db/specs';
+import { findRevision, findSpec, listSpecChoices, type Revision } from '$lib/server/db/specs';
 import { findSpool } from '$lib/server/db/spools';
 import { compareSpecs, type Side } from '$lib/spec/compare';
 import { readAsked, writeAsked, type Asked } from './sides';
@@ -15,7 +15,7 @@ export const load: PageServerLoad = async ({ locals, params, url }) => {
 	const found = await inWorkshop(locals.db, workshopId, async (trx) => {
 		const spec = await findSpec(trx, workshopId, params.spec);
 		if (!spec) return null;
-		const others = (await listSpecs(trx, workshopId)).filter(({ id }) => id !== spec.id);
+		const others = (await listSpecChoices(trx, workshopId)).filter(({ id }) => id !== spec.id);
 		const given = (name: 'a' | 'b'): Asked | null => {
 			const text = url.searchParams.get(name) ?? '';
 			if (text === '') return null;
