@@ -63,6 +63,18 @@ describe('meters', () => {
 		expect(await inShop((trx) => editMeter(trx, shop, id, { ...changed, name: 'bench METER' }))).toBe('name-taken');
 	});
 
+	it('of two that take one name at the same moment lets one have it and tells the other', async () => {
+		for (let i = 0; i < 10; i++) {
+			const id = await made({ ...bench, name: `Old name ${i}` });
+			const name = `New name ${i}`;
+			const [added, edited] = await Promise.all([
+				inShop((trx) => addMeter(trx, shop, { ...bench, name })),
+				inShop((trx) => editMeter(trx, shop, id, { ...bench, name }))
+			]);
+			expect([added.ok, edited]).toEqual(added.ok ? [true, 'name-taken'] : [false, 'ok']);
+		}
+	});
+
 	it('shows, changes and removes nothing of another workshop', async () => {
 		const theirs = await made(bench, other);
 		expect((await inShop((trx) => listMeters(trx, shop))).map(({ id }) => id)).not.toContain(theirs);

@@ -72,6 +72,7 @@ export async function addMeter(
 	workshopId: string,
 	meter: MeterInput
 ): Promise<{ ok: true; id: string } | { ok: false; why: 'name-taken' }> {
+	await lockNames(trx, workshopId);
 	const row = await trx
 		.insertInto('meter')
 		.values({ workshop_id: workshopId, ...columns(meter) })
@@ -89,8 +90,7 @@ export async function editMeter(
 	meter: MeterInput
 ): Promise<'ok' | 'not-found' | 'name-taken'> {
 	if (!isUuid(meterId)) return 'not-found';
-	// Of two that take one name at the same moment the second waits here and is told so.
-	await sql`select pg_advisory_xact_lock(hashtextextended(${`meter names ${workshopId}`}, 0))`.execute(trx);
+	await lockNames(trx, workshopId);
 	const taken = await trx
 		.selectFrom('meter')
 		.select('id')
@@ -121,6 +121,11 @@ export async function removeMeter(trx: Trx, workshopId: string, meterId: string)
 		.where('removed_at', 'is', null)
 		.executeTakeFirst();
 	return result.numUpdatedRows > 0n ? 'ok' : 'not-found';
+}
+
+/** Of two that take one name at the same moment the second is told so, where the index alone would raise an error. */
+async function lockNames(trx: Trx, workshopId: string): Promise<void> {
+	await sql`select pg_advisory_xact_lock(hashtextextended(${`meter names ${workshopId}`}, 0))`.execute(trx);
 }
 
 function columns({ name, ranges }: MeterInput) {
