@@ -132,6 +132,42 @@ describe('what the host writes and the core reads', () => {
 		);
 	});
 
+	it('each value at and beyond each end, and each wrong spelling, is taken or refused alike', () => {
+		const bodies = [
+			'SET id=17 b=5C0E91A7 tgt=8000 look=500 ease=40 stop=3 from=1 fst=100',
+			'STOP id=20 b=5C0E91A7',
+			'ACK b=5C0E91A7 n=1044 e=3',
+			'SYNC b=5C0E91A7 e=1',
+			'HOLD ms=500',
+			'TIME u=1796133600'
+		];
+		const ends = [0, 1, 60_000, 60_001, 2 ** 31 - 1, 2 ** 31, 2 ** 31 + 1, 2 ** 32 - 1, 2 ** 32, 2 ** 32 + 1, 1e10];
+		const odd = [
+			'-0',
+			'00',
+			'01',
+			'+5',
+			'-',
+			'--1',
+			'1-',
+			'1e9',
+			'0x10',
+			'1.5',
+			'NaN',
+			'5C0E91A',
+			'5c0e91a7',
+			'FFFFFFFF'
+		];
+		const values = [...odd, ...ends.flatMap((end) => [`${end}`, `-${end}`])];
+		const texts = bodies.flatMap((body) =>
+			[...body.matchAll(/ ([a-z]+)=/g)].flatMap(([, key]) =>
+				values.map((value) => withChecksum(body.replace(new RegExp(` ${key}=[^ ]+`), ` ${key}=${value}`)))
+			)
+		);
+		const answers = ask(texts.map((text) => `R ${text}`));
+		expect(texts.map((text, at) => [text, answers[at]])).toEqual(texts.map((text) => [text, expected(text)]));
+	});
+
 	it('every flipped bit and every exchange of two bytes is refused', () => {
 		const text = 'SET id=21 b=5C0E91A7 tgt=11183 look=500 ease=40 stop=3 from=3183 fst=100 ~49BC';
 		const wrong: string[] = [];
