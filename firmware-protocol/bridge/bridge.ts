@@ -65,6 +65,7 @@ export class Bridge {
 	/** Boots of which the server itself waits for "I have them no more". */
 	readonly #serverAsks = new Set<string>();
 	#refused = 0;
+	#stopping = false;
 
 	constructor(options: BridgeOptions) {
 		this.#options = options;
@@ -77,7 +78,7 @@ export class Bridge {
 				this.#ask();
 			},
 			down: () => {
-				options.tell('The link to the server is gone. Lines are kept here.');
+				if (!this.#stopping) options.tell('The link to the server is gone. Lines are kept here.');
 				this.#serverAsks.clear();
 				this.#sender.linkDown();
 			},
@@ -120,6 +121,7 @@ export class Bridge {
 
 	/** Keeps what was heard, acknowledges it, closes port and link. Afterwards everything acknowledged is on disk. */
 	async stop(): Promise<void> {
+		this.#stopping = true;
 		this.#keep([]);
 		await this.#keeping;
 		await this.#port.close();
