@@ -146,6 +146,17 @@ describe('the ring', () => {
 			expect(Math.max(...times.slice(1).map((t, at) => t - times[at]!))).toBeLessThan(15_000);
 		}));
 
+	it('after five hours without a link each tick still tells its own time', () =>
+		withBoard(['--unlinked', '--step', '20'], async (board) => {
+			board.wait(5 * 3_600_000);
+			board.order('link up');
+			board.wait(500);
+			const ticks = (await board.mark()).lines.filter(isTick);
+			expect(ticks.length).toBeGreaterThanOrEqual(10);
+			// Standing it makes one a second, from the first second on.
+			expect(ticks.map((tick) => tick.t)).toEqual(ticks.map((tick) => tick.n * 1000));
+		}));
+
 	it('when an event must go after all, a report of it stands in its place, once', () =>
 		withBoard(['--unlinked'], async (board) => {
 			for (let press = 0; press < 100; press++) board.order('button');
