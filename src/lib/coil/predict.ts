@@ -1,5 +1,5 @@
 import { scaleAt, scatterPrior, type Calibration } from './calibrate.ts';
-import { airInductanceH, inductanceClaims, inductanceRatio, mutualBesideH, type Window } from './inductance.ts';
+import { airInductanceH, inductanceRatio, mutualBesideH, type Window } from './inductance.ts';
 import { turnsMax, within } from './limits.ts';
 import {
 	atValues,
@@ -248,6 +248,3 @@ export function predict(input: PredictionInput): Result<Prediction> {
 		coilF: load && (load.coilF ?? pickupCoilF(input.packing, turns.length, connection))
 	});
 }
-
-/** The half-width for a core whose effective permeability came from one measured coil, for `halfWidths.permeabilityPart`. */
-export const calibratedPermeabilityPart = inductanceClaims.calibrated;

@@ -81,7 +81,7 @@ export const figuresApartMax = 0.05;
  */
 export const apartFromRestMax = 0.05;
 /** Of two that disagree nobody can say which is wrong. */
-export const restCoilsMin = 3;
+const restCoilsMin = 3;
 
 /** However well widths agree, the next coil of the same hands is packed this much differently. Common practice, no source. */
 export const packingHalfWidthMin = 0.02;

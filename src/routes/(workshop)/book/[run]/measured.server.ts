@@ -1,11 +1,13 @@
-import type { Verdict } from '../../../../lib/coil/band.ts';
+import type { Expected, Verdict } from '../../../../lib/coil/band.ts';
 import { difference, rectangular, type At20C } from '../../../../lib/coil/measurement.ts';
 import type { Refused } from '../../../../lib/coil/refuse.ts';
+import type { Uncertain } from '../../../../lib/coil/uncertainty.ts';
 import { to20C } from '../../../../lib/coil/wire.ts';
 import { listReadings, neighboursOf, type Reading } from '../../../../lib/server/db/readings.ts';
 import type { Run } from '../../../../lib/server/db/runs.ts';
 import { findRevision, keptReadings } from '../../../../lib/server/db/specs.ts';
 import { findSpool, listSpools } from '../../../../lib/server/db/spools.ts';
+import type { SpecContent, SpecWire } from '../../../../lib/spec/content.ts';
 import {
 	expectedCoil,
 	nextStep,
@@ -17,7 +19,13 @@ import {
 	type ExpectedCoil,
 	type Side
 } from '../../../../lib/spec/judged.ts';
-import { keptWithout, resistanceSay, type KeptSay, type LeftOutWhy } from '../../../../lib/spec/kept.ts';
+import {
+	keptWithout,
+	resistanceSay,
+	type KeptReading,
+	type KeptSay,
+	type LeftOutWhy
+} from '../../../../lib/spec/kept.ts';
 import { predictCoil } from '../../../../lib/spec/model.ts';
 
 /** Everything a run's page says of what its coil should measure, and of what it did. SI. */
@@ -61,51 +69,12 @@ export async function measuredOf(trx: Trx, workshopId: string, run: Run) {
 	const turns = run.onBobbin;
 	const taken = await listReadings(trx, workshopId, run.id);
 
-	let expected: ExpectedCoil | null = null;
-	let plain: ExpectedCoil | null = null;
-	let refused: Refused | null = null;
-	let calibration: {
-		scale: number;
-		uncertainty: number;
-		used: { runId: string; sticker: string; turns: number; ratio: number; share: number }[];
-	} | null = null;
-	let leftOut: KeptSay['leftOut'] = [];
-	let teachesNot: LeftOutWhy | null = null;
-	let outerWidthM: { value: number; uncertainty: number } | null = null;
-	let inductanceH: { value: number; uncertainty: number } | null = null;
-	if (content && turns !== null && turns >= 1) {
-		const kept = await keptReadings(trx, workshopId, {
-			bobbinName: content.bobbin.name,
-			spoolId: run.spoolId
-		});
-		// A coil never speaks for itself.
-		const say = resistanceSay(content, wire, keptWithout(kept, run.id));
-		leftOut = say.leftOut.filter(({ why }) => why !== 'no-resistance');
-		teachesNot = resistanceSay(content, wire, kept).leftOut.find(({ runId }) => runId === run.id)?.why ?? null;
-		const by = expectedCoil(content, turns, { wire, calibration: say.calibration });
-		if (by.ok) expected = by.value;
-		else refused = by;
-		if (say.calibration) {
-			const without = expectedCoil(content, turns, { wire });
-			plain = without.ok ? without.value : null;
-			calibration = {
-				scale: say.calibration.scale,
-				uncertainty: say.calibration.uncertainty,
-				used: say.used.map(({ runId, sticker, turns: wound, ratio, share }) => ({
-					runId,
-					sticker,
-					turns: wound,
-					ratio,
-					share
-				}))
-			};
-		}
-		const all = predictCoil(content, turns, { wire });
-		if (all.ok) {
-			outerWidthM = all.value.figures.outerWidthM;
-			inductanceH = all.value.figures.inductanceH;
-		}
-	}
+	const kept =
+		content && (await keptReadings(trx, workshopId, { bobbinName: content.bobbin.name, spoolId: run.spoolId }));
+	const { expected, outerWidthM, inductanceH, ...said } =
+		content && kept && turns !== null && turns >= 1
+			? expectationOf(content, wire, turns, kept, run.id)
+			: nothingExpected;
 
 	const readings = taken.map((reading): MeasuredReading => {
 		const { runId: _run, meterId: _meter, meterRange, ...told } = reading;
@@ -160,17 +129,75 @@ export async function measuredOf(trx: Trx, workshopId: string, run: Run) {
 			toOhm: expected.toOhm,
 			parts: expected.parts
 		},
-		plain: plain && { ohm: plain.ohm, uncertaintyOhm: plain.uncertaintyOhm },
-		refused,
-		calibration,
-		/** Other kept coils that were measured and teach this one nothing. */
-		leftOut,
-		/** Why this coil teaches the others nothing; null: it does, or is not asked to. */
-		teachesNot,
+		...said,
 		outerWidthM: outerWidthM && { value: outerWidthM.value, uncertainty: outerWidthM.uncertainty },
 		inductanceH: inductanceH && { value: inductanceH.value, uncertainty: inductanceH.uncertainty },
 		readings,
 		differences: await differencesOf(trx, workshopId, run, taken)
+	};
+}
+
+interface Expectation {
+	expected: ExpectedCoil | null;
+	/** Without what the kept coils say; null: they say nothing. */
+	plain: Expected | null;
+	/** Why nothing can be expected. */
+	refused: Refused | null;
+	calibration: {
+		scale: number;
+		uncertainty: number;
+		used: { runId: string; sticker: string; turns: number; ratio: number; share: number }[];
+	} | null;
+	/** Other kept coils that were measured and teach this one nothing. */
+	leftOut: KeptSay['leftOut'];
+	/** Why this coil teaches the others nothing; null: it does, or is not asked to. */
+	teachesNot: LeftOutWhy | null;
+	outerWidthM: Pick<Uncertain, 'value' | 'uncertainty'> | null;
+	inductanceH: Pick<Uncertain, 'value' | 'uncertainty'> | null;
+}
+
+const nothingExpected: Expectation = {
+	expected: null,
+	plain: null,
+	refused: null,
+	calibration: null,
+	leftOut: [],
+	teachesNot: null,
+	outerWidthM: null,
+	inductanceH: null
+};
+
+/** What a coil of so many turns should measure, by the model and by what the others say: a coil never speaks for itself. */
+function expectationOf(
+	content: SpecContent,
+	wire: SpecWire | null,
+	turns: number,
+	kept: readonly KeptReading[],
+	runId: string
+): Expectation {
+	const { calibration, used, leftOut } = resistanceSay(content, wire, keptWithout(kept, runId));
+	const by = expectedCoil(content, turns, { wire, calibration });
+	const without = calibration && expectedCoil(content, turns, { wire });
+	const all = predictCoil(content, turns, { wire });
+	return {
+		expected: by.ok ? by.value : null,
+		plain: without?.ok ? { ohm: without.value.ohm, uncertaintyOhm: without.value.uncertaintyOhm } : null,
+		refused: by.ok ? null : by,
+		calibration: calibration && {
+			scale: calibration.scale,
+			uncertainty: calibration.uncertainty,
+			used: used.map(({ runId: id, sticker, turns: wound, ratio, share }) => ({
+				runId: id,
+				sticker,
+				turns: wound,
+				ratio,
+				share
+			}))
+		},
+		leftOut: leftOut.filter(({ why }) => why !== 'no-resistance'),
+		teachesNot: resistanceSay(content, wire, kept).leftOut.find((coil) => coil.runId === runId)?.why ?? null,
+		outerWidthM: all.ok ? all.value.figures.outerWidthM : null,
+		inductanceH: all.ok ? all.value.figures.inductanceH : null
 	};
 }
 
