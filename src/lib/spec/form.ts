@@ -239,6 +239,9 @@ export const specLabels: Readonly<Record<SpecField, string>> = {
 /** Closer looks stop the hands more than they help. */
 export const lookEveryMin = 10;
 
+/** Of pots, inputs and losses as they are typed: above it nothing in a guitar is told from none. */
+const loadOhmMax = 1e8;
+
 type MeasuredField =
 	| 'stringSpacing'
 	| 'stringRadius'
@@ -268,8 +271,8 @@ export function specMeasures(units: UnitPreference): Record<MeasuredField, Measu
 		measure(specLabels[field], 'length', wireLengthUnit(units), specLimits.cableLengthM);
 	const part = (field: MeasuredField, range: readonly [number, number]) =>
 		measure(specLabels[field], 'part', 'one', range);
-	const ohm = (field: MeasuredField, range: readonly [number, number], empty: string | null = null) =>
-		measure(specLabels[field], 'resistance', units.resistance, range, empty);
+	const ohm = (field: MeasuredField, [least]: readonly [number, number], empty: string | null = null) =>
+		measure(specLabels[field], 'resistance', units.resistance, [least, loadOhmMax], empty);
 	return {
 		...wireMeasures(units),
 		stringSpacing: length('stringSpacing', specLimits.stringSpacingM, 'not said'),

@@ -62,6 +62,22 @@ describe('a wire in a form', () => {
 		expect((read.ok ? read.wire : read.partial).diameterM).toBeCloseTo(diameterM, 12);
 	});
 
+	it.each([
+		['42', awgDiameterM(42)],
+		['AWG 43', awgDiameterM(43)],
+		// No wire is that thick: a diameter is meant.
+		['0.063', 0.063e-3],
+		['0,2', 0.2e-3]
+	])('reads a bare %s of whoever prefers gauges', (text, diameterM) => {
+		const read = wireMeasures(gauges).wireDiameter.read(text);
+		expect(read.ok && read.value).toBeCloseTo(diameterM, 12);
+	});
+
+	it('has a bare number that is neither gauge nor diameter as a gauge, to be refused', () => {
+		const read = wireMeasures(gauges).wireDiameter.read('63');
+		expect(read.ok && read.value).toBeCloseTo(awgDiameterM(63), 12);
+	});
+
 	it('is of no size of the table any more once its diameter is another', () => {
 		const typed = { ...writeWire(tableWire('awg-42', 'single'), metric), wireDiameter: '0.0625' };
 		const read = readWire(typed, metric, tableWire('awg-42', 'single'));

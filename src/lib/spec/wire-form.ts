@@ -1,5 +1,5 @@
 import { limits } from '../coil/limits.ts';
-import type { UnitPreference } from '../coil/units.ts';
+import type { Typed, UnitPreference } from '../coil/units.ts';
 import { awgTableDiameterM, enamelMaterials, wireSizes, type EnamelMaterial } from '../coil/wire.ts';
 import { grades, type Grade, type SpecWire } from './content.ts';
 import { measure, readChoice, readMeasure, type Measure } from './measures.ts';
@@ -66,7 +66,12 @@ export function wireMeasures(units: UnitPreference): Record<WireMeasure, Measure
 	return {
 		wireDiameter:
 			units.wireDiameter === 'awg'
-				? { ...bare, symbol: '', read: gauged.read, write: (si, digits) => bareText(si, bare, gauged, digits) }
+				? {
+						...bare,
+						symbol: '',
+						read: (text) => readBare(text, bare, gauged),
+						write: (si, digits) => bareText(si, bare, gauged, digits)
+					}
 				: bare,
 		wireOverall: overall('wireOverall', null),
 		wireOverallMin: overall('wireOverallMin', 'not known'),
@@ -79,6 +84,15 @@ export function wireMeasures(units: UnitPreference): Record<WireMeasure, Measure
 			'not measured'
 		)
 	};
+}
+
+/** A bare number is a gauge; where no wire of that gauge is wound, it is a diameter: "0.063" is no gauge. */
+function readBare(text: string, bare: Measure, gauged: Measure): Typed {
+	const [least, most] = bare.range;
+	const gauge = gauged.read(text);
+	if (!gauge.ok || (gauge.value >= least && gauge.value <= most)) return gauge;
+	const diameter = bare.read(text);
+	return diameter.ok && diameter.value >= least && diameter.value <= most ? diameter : gauge;
 }
 
 /** A whole gauge by its number, anything else as a diameter. */
