@@ -165,7 +165,7 @@ describe('how it fits', () => {
 	it('is said in a plain sentence with the reason', () => {
 		expect(fitSentence(drawn(spec(5000)), usualUnits)).toBe('The copper stays 0.65 mm inside the flange on each side.');
 		expect(fitSentence(drawn(spec(5300)), usualUnits)).toBe(
-			'Only 0.35 mm to the flange on each side: below 0.50 mm the last turns climb it and there is no room for tape.'
+			'Only 0.35 mm to the flange on each side: too little for tape, and the last turns may climb it.'
 		);
 		expect(fitSentence(drawn(spec(6200)), usualUnits)).toMatch(
 			/^It does not fit: the copper would stand 0\.57 mm beyond the flange on each side\. Wind fewer turns/

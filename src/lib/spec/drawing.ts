@@ -289,7 +289,7 @@ export function fitSentence({ coil, fit }: Pick<CoilDrawing, 'coil' | 'fit'>, un
 	if (fit === 'over')
 		return `It does not fit: the copper would stand ${roomText(-roomM, units)} beyond the flange on each side. Wind fewer turns, or take thinner wire.`;
 	if (fit === 'near')
-		return `Only ${roomText(Math.max(0, roomM), units)} to the flange on each side: below ${roomText(roomMinM, units)} the last turns climb it and there is no room for tape.`;
+		return `Only ${roomText(Math.max(0, roomM), units)} to the flange on each side: too little for tape, and the last turns may climb it.`;
 	return `The copper stays ${roomText(roomM, units)} inside the flange on each side.`;
 }
 

@@ -215,7 +215,7 @@ describe('room to the flange', () => {
 		expect(roomWords({ m: roomMinM + 1e-9, uncertaintyM: 0 }, usualUnits).danger).toBe(false);
 		expect(roomWords({ m: roomMinM - 1e-9, uncertaintyM: 0 }, usualUnits)).toMatchObject({
 			danger: true,
-			remark: 'less than 0.5 mm: the last turns may climb the flange'
+			remark: 'too little for tape: the last turns may climb the flange'
 		});
 		expect(roomWords({ m: -0.0002, uncertaintyM: 0.0005 }, usualUnits)).toEqual({
 			danger: true,

@@ -66,8 +66,7 @@ export function roomWords(room: Room, units: UnitPreference): { remark: string; 
 	const said = (m: number) => shownValue(m, 'length', units.length, 2);
 	if (room.m < 0)
 		return { remark: `does not fit: ${said(-room.m)} too much on each side. Wind fewer turns.`, danger: true };
-	if (room.m < roomMinM)
-		return { remark: `less than ${said(roomMinM)}: the last turns may climb the flange`, danger: true };
+	if (room.m < roomMinM) return { remark: 'too little for tape: the last turns may climb the flange', danger: true };
 	if (room.m < coverage * room.uncertaintyM)
 		return { remark: 'may turn out full: look at the edge before the last hundreds of turns', danger: false };
 	return { remark: 'on each side, for tape and the last turns', danger: false };
@@ -286,7 +285,7 @@ export function figureRows(
 				plusMinus: pm(shown.half),
 				...roomWords(room, units),
 				shares: shares(parts),
-				explains: 'What is left between the copper and the edge of the flange on each side.'
+				explains: `What is left between the copper and the edge of the flange on each side: less than ${shownValue(roomMinM, 'length', units.length, 1)} is too little for tape and the last turns.`
 			})
 		);
 	} else {
