@@ -17,7 +17,7 @@ export const actions: Actions = {
 		const name = readName(typed);
 		if (!name.ok) return fail(400, { name: typed, nameReason: name.reason });
 		await changeName(locals.db, member.workshopId, member.id, name.value);
-		return { done: 'Your name is changed.' };
+		return { changed: 'name' as const, done: 'Your name is changed.' };
 	},
 
 	units: async ({ locals, request }) => {
@@ -27,7 +27,7 @@ export const actions: Actions = {
 			return fail(400, { unitsReason: 'Choose one of the units offered for each. Your units are as they were.' });
 		}
 		await inWorkshop(locals.db, member.workshopId, (trx) => setUnits(trx, member.workshopId, member.id, chosen.data));
-		return { done: 'Your units are changed, here and on every page.' };
+		return { changed: 'units' as const, done: 'Your units are changed, here and on every page.' };
 	},
 
 	password: async (event) => {
@@ -49,7 +49,7 @@ export const actions: Actions = {
 		await setPassword(locals.db, member.workshopId, member.id, await hashPassword(chosen));
 		// Every session has ended, this one too; this screen has just shown that it knows the new password.
 		await openSession(event, member.email, chosen);
-		return { done: 'Your password is changed. Every other screen is signed out.' };
+		return { changed: 'password' as const, done: 'Your password is changed. Every other screen is signed out.' };
 	},
 
 	everywhere: async (event) => {
