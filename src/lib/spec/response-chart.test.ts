@@ -6,6 +6,7 @@ import {
 	chartToHz,
 	comparedMax,
 	hertzText,
+	inductanceText,
 	isOff,
 	levelAxisDb,
 	levelText,
@@ -13,6 +14,7 @@ import {
 	peakDbText,
 	peakHzText,
 	peakSpanHz,
+	peakSpanText,
 	sheetOf,
 	type Compared,
 	type LookAsked
@@ -54,6 +56,35 @@ describe('the look at a spec', () => {
 		expect(curves[0].levelsDb).toHaveLength(hertz.length);
 		const steps = hertz.slice(1).map((hz, i) => hz / hertz[i]!);
 		expect(Math.max(...steps) - Math.min(...steps)).toBeLessThan(1e-9);
+	});
+
+	it('tells curves of one name apart, in the legend and in the sheet', () => {
+		const same: Compared = { ...neck, key: 'm', name: bridge.name };
+		const named = look(bridge, [same, { ...same, key: 'o' }, neck]);
+		expect(named.curves.map(({ name }) => name)).toEqual([
+			'Evening bridge',
+			'Evening bridge (2)',
+			'Evening bridge (3)',
+			'Evening neck'
+		]);
+		expect(new Set(sheetOf(named).header).size).toBe(sheetOf(named).header.length);
+	});
+
+	it('has another spec into what this one plays into now, however often it was looked at before', () => {
+		const at = (more: Partial<LookAsked>) => look(bridge, [neck], more).curves[1]!;
+		const first = at({});
+		expect(at({})).toEqual(first);
+		expect(at({ cableLengthM: 6 }).peak!.hz).toBeLessThan(first.peak!.hz);
+		expect(at({ dials: { volume: 5, tone: 10 } }).levelsDb[0]).toBeLessThan(first.levelsDb[0]!);
+		expect(at({})).toEqual(first);
+	});
+
+	it('says inductance and the span of the peak with the digits their uncertainty leaves', () => {
+		const [own] = look().curves;
+		expect(inductanceText(own)).toMatch(/^\d\.\d H ± \d\.\d$/);
+		expect(inductanceText({ inductanceH: 5.3312, inductanceHalfH: null })).toBe('5.33 H');
+		expect(peakSpanText(own.peak!)).toMatch(/^\d\.\d–\d\.\d kHz$/);
+		expect(peakSpanText({ ...own.peak!, hzHalf: null })).toBeNull();
 	});
 
 	it('lies in its band, and the band reaches its height at both edges of the span of the peak', () => {

@@ -4,9 +4,10 @@ import { halfWidthsOf } from '../coil/model.ts';
 import { predict, type Prediction } from '../coil/predict.ts';
 import { ok, type Refused, type Result } from '../coil/refuse.ts';
 import { eNotes, findPeak, peakOf, responseDb, sweepHz, type Circuit } from '../coil/response.ts';
+import { shownValue } from '../coil/units.ts';
 import type { SpecContent, SpecWire } from './content.ts';
 import { specInput, type Dials } from './model.ts';
-import { plusMinus, plusMinusOf } from './words.ts';
+import { plusMinus, plusMinusOf, spanText } from './words.ts';
 
 /**
  * How specs and measured coils ring into one load, as plain arrays a chart or a table can show. Hertz, decibels over the
@@ -65,6 +66,8 @@ export interface Curve {
 	/** At `eNotes`. */
 	notesDb: number[];
 	inductanceH: number;
+	/** Half-width that holds 19 times in 20; null for a measured coil. */
+	inductanceHalfH: number | null;
 	resistanceOhm: number;
 	coilF: number;
 	coilMeasured: boolean;
@@ -96,27 +99,58 @@ export function lookAt(
 	const first = specCurve('this', own.name, 'this', { ...own.content, load }, { dials, wire, calibration }, hertz);
 	if (!first.ok) return first;
 	const curves: Look['curves'] = [first.value];
+	const names = toldApart([own.name, ...compared.map(({ name }) => name)]);
 	const leftOut: Look['leftOut'] = [];
-	for (const other of compared.slice(0, comparedMax)) {
+	for (const [i, other] of compared.slice(0, comparedMax).entries()) {
+		const name = names[i + 1]!;
 		let curve: Result<Curve>;
 		if (other.of === 'spec') {
 			// Self-capacitance and losses are the pickup's own; pots, cable and input are what all play into.
 			const { coilF, lossOhm } = other.content.load;
 			const content = { ...other.content, load: { ...load, coilF, lossOhm } };
-			curve = specCurve(other.key, other.name, 'spec', content, { dials }, hertz);
+			curve = comparedCurve(other.content, { key: other.key, name }, content, dials, hertz);
 		} else {
 			const { resistanceOhm, inductanceH, coilF } = other;
 			const { circuit } = first.value;
 			curve = drawn(
-				{ key: other.key, name: other.name, of: 'measured', coilMeasured: coilF !== null },
+				{ key: other.key, name, of: 'measured', coilMeasured: coilF !== null },
 				{ ...circuit, resistanceOhm, inductanceH, coilF: coilF ?? circuit.coilF },
 				hertz
 			);
 		}
 		if (curve.ok) curves.push(curve.value);
-		else leftOut.push({ key: other.key, name: other.name, refused: curve });
+		else leftOut.push({ key: other.key, name, refused: curve });
 	}
 	return ok({ hertz, curves, leftOut, cableLengthM, cableF: first.value.circuit.cableF });
+}
+
+/** Names as they are, and "Evening bridge (2)" for one that stands there already. */
+function toldApart(names: readonly string[]): string[] {
+	const told: string[] = [];
+	for (const name of names) {
+		let again = name;
+		for (let no = 2; told.includes(again); no += 1) again = `${name} (${no})`;
+		told.push(again);
+	}
+	return told;
+}
+
+const remembered = new WeakMap<SpecContent, { asked: string; curve: Result<Curve> }>();
+
+/** Another spec's curve, which stays as it is while this spec's fields are moved: the last one of each is remembered. */
+function comparedCurve(
+	stored: SpecContent,
+	{ key, name }: Pick<Curve, 'key' | 'name'>,
+	content: SpecContent,
+	dials: Dials,
+	hertz: readonly number[]
+): Result<Curve> {
+	const asked = JSON.stringify([key, name, content.load, dials]);
+	const known = remembered.get(stored);
+	if (known?.asked === asked) return known.curve;
+	const curve = specCurve(key, name, 'spec', content, { dials }, hertz);
+	remembered.set(stored, { asked, curve });
+	return curve;
 }
 
 type Named = Pick<Curve, 'key' | 'name' | 'of' | 'coilMeasured'>;
@@ -140,6 +174,7 @@ function drawn(named: Named, circuit: Circuit, hertz: readonly number[]): Result
 		peak: peak.value && { ...peak.value, hzHalf: null, dbHalf: null },
 		notesDb: notes.value,
 		inductanceH,
+		inductanceHalfH: null,
 		resistanceOhm,
 		coilF,
 		circuit
@@ -170,6 +205,7 @@ function specCurve(
 	const { peakHz, peakDb } = prediction;
 	return ok({
 		...curve.value,
+		inductanceHalfH: coverage * inductanceH.uncertainty,
 		band:
 			of === 'this' ? bandOf(circuit, prediction, rectangular(halfWidthsOf(input).coilCapacitancePart), hertz) : null,
 		peak: peakHz &&
@@ -313,6 +349,21 @@ export function peakHzText({ hz, hzHalf }: CurvePeak): string {
 	return hzHalf === null
 		? hertzText(hz)
 		: plusMinus(hz, hzHalf / coverage, 'frequency', hz < 1000 ? 'hertz' : 'kilohertz').text;
+}
+
+/** "5.1 H ± 1.5"; three digits where nothing says how sure it is. */
+export function inductanceText({
+	inductanceH,
+	inductanceHalfH
+}: Pick<Curve, 'inductanceH' | 'inductanceHalfH'>): string {
+	return inductanceHalfH === null
+		? shownValue(inductanceH, 'inductance', 'henry', 3)
+		: plusMinus(inductanceH, inductanceHalfH / coverage, 'inductance', 'henry').text;
+}
+
+/** "2.2–3.1 kHz": where the peak is to be expected, with the digits that leaves; null where that is not known. */
+export function peakSpanText({ hz, hzHalf }: CurvePeak): string | null {
+	return hzHalf === null ? null : spanText(hz, hzHalf / coverage, 'frequency', hz < 1000 ? 'hertz' : 'kilohertz');
 }
 
 /** "+5.1 dB", "−6.2 dB", with a true minus sign. */

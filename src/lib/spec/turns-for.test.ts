@@ -204,6 +204,8 @@ describe('what some turns more do', () => {
 		expect(change.depth.value).toBeGreaterThan(0);
 		expect(change.hertz!.value).toBeLessThan(0);
 		expect(value(turnsMore(content, content.wire, null, -200)).ohm.value).toBeLessThan(0);
+		// The same from a prediction that is known already.
+		expect(value(turnsMore(content, content.wire, null, 200, predictSpec(content)))).toEqual(change);
 	});
 
 	it('is told with signs and directions', () => {

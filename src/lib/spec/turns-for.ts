@@ -144,14 +144,16 @@ export interface Change {
 /**
  * Differences carry the relative uncertainty of the figure they are a difference of: what makes the whole unsure makes its
  * growth unsure in proportion.
+ *
+ * @param now the prediction for `content` where somebody has it already
  */
 export function turnsMore(
 	content: SpecContent,
 	wire: SpecWire,
 	calibration: Calibration | null,
-	more: number
+	more: number,
+	now: Result<Prediction> = predictSpec(content, { wire, calibration })
 ): Result<Change> {
-	const now = predictSpec(content, { wire, calibration });
 	if (!now.ok) return now;
 	const then = predictSpec(
 		withTurns(

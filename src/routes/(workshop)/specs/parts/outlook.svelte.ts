@@ -3,7 +3,7 @@ import type { Prediction } from '$lib/coil/predict';
 import type { Result } from '$lib/coil/refuse';
 import type { UnitPreference } from '$lib/coil/units';
 import type { SpecContent, SpecWire } from '$lib/spec/content';
-import { figureRows } from '$lib/spec/figures';
+import { figureRows, type FigureRow } from '$lib/spec/figures';
 import { calibrationOf, type KeptReading, type KeptSay } from '$lib/spec/kept';
 import { predictSpec } from '$lib/spec/model';
 import type { EditorData } from '../editor.server';
@@ -40,13 +40,16 @@ export class Outlook {
 	readonly plain: Result<Prediction> | null = $derived.by(() =>
 		this.calibration ? predictSpec(this.#of().content, { wire: this.wire }) : null
 	);
-	/** Resistance, room and peak: what is watched while a field is changed. */
-	readonly key: { key: string; label: string; text: string; danger: boolean }[] = $derived.by(() => {
+	/** Every figure in words; none where there is no prediction. */
+	readonly rows: FigureRow[] = $derived.by(() => {
 		if (!this.prediction.ok) return [];
 		const { content, units } = this.#of();
-		const rows = figureRows(content, this.prediction.value, units, null, this.wire);
+		return figureRows(content, this.prediction.value, units, this.plain?.ok ? this.plain.value : null, this.wire);
+	});
+	/** Resistance, room and peak: what is watched while a field is changed. */
+	readonly key: { key: string; label: string; text: string; danger: boolean }[] = $derived.by(() => {
 		const short: Record<string, string> = { resistance: 'At 20 °C', room: 'Room', peak: 'Peak' };
-		return rows
+		return this.rows
 			.filter(({ key }) => key in short)
 			.map(({ key, value, plusMinus, danger }) => ({
 				key,

@@ -7,6 +7,7 @@ import {
 	levelAxisDb,
 	levelText,
 	peakSpanHz,
+	peakSpanText,
 	type Look
 } from '$lib/spec/response-chart';
 import { lineLooks, samplePx } from './lines';
@@ -104,7 +105,7 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 			const { peak } = look.curves[0];
 			const edges = peak && peakSpanHz(peak);
 			if (!edges) return;
-			const lines = ['Peak, 19 in 20:', `${hertzText(edges.fromHz)} to`, hertzText(edges.toHz)];
+			const lines = ['Peak, 19 in 20:', peakSpanText(peak)!];
 			ctx.save();
 			ctx.font = `14px ${font.family}`;
 			const width = Math.max(...lines.map((line) => ctx.measureText(line).width));
@@ -112,7 +113,7 @@ export async function drawResponse(canvas: HTMLCanvasElement, first: Look, fixed
 			const right = scales['hertz']!.getPixelForValue(edges.toHz) + 8;
 			// Low and left of the band nothing else stands: the curves are flat there, at the top.
 			const from = left > chartArea.left ? left : Math.min(right, chartArea.right - width);
-			const top = chartArea.bottom - 46;
+			const top = chartArea.bottom - 28;
 			ctx.fillStyle = copper;
 			lines.forEach((line, i) => ctx.fillText(line, from, top + 18 * i));
 			ctx.restore();
