@@ -111,27 +111,46 @@ export function calibrationOf(content: SpecContent, spoolWire: SpecWire | null, 
 	};
 }
 
-/** The kept coils that may say what this one should measure: all but itself. */
-export const keptWithout = (kept: readonly KeptReading[], runId: string): readonly KeptReading[] =>
-	kept.some((reading) => reading.runId === runId) ? kept.filter((reading) => reading.runId !== runId) : kept;
+export type ResistanceSay = Pick<KeptSay, 'calibration' | 'used' | 'leftOut'>;
 
 /** The part of `calibrationOf` that resistances have to say. */
-export function resistanceSay(
+export const resistanceSay = (
 	content: SpecContent,
 	spoolWire: SpecWire | null,
 	kept: readonly KeptReading[]
-): Pick<KeptSay, 'calibration' | 'used' | 'leftOut'> {
+): ResistanceSay => resistanceSays(content, spoolWire, kept)(null);
+
+/**
+ * The same for many coils that ask: each is told what the others say, for no coil speaks for itself. The kept coils are
+ * looked at once.
+ *
+ * @returns what all but one coil say, by its run; null: all of them
+ */
+export function resistanceSays(
+	content: SpecContent,
+	spoolWire: SpecWire | null,
+	kept: readonly KeptReading[]
+): (exceptRunId: string | null) => ResistanceSay {
 	const model = specModel(content, spoolWire);
 	const candidates: Candidate[] = [];
-	const leftOut: KeptSay['leftOut'] = [];
-	const leaveOut = ({ runId, sticker }: KeptReading, why: LeftOutWhy) => leftOut.push({ runId, sticker, why });
+	const unusable: KeptSay['leftOut'] = [];
 	for (const reading of kept) {
 		const judged = usableCoil(model, content, reading);
-		if (typeof judged === 'string') leaveOut(reading, judged);
+		if (typeof judged === 'string') unusable.push(leftOutFor(reading, judged));
 		else candidates.push({ reading, ...judged });
 	}
+	return (exceptRunId) =>
+		sayOf(
+			model,
+			candidates.filter(({ reading }) => reading.runId !== exceptRunId),
+			unusable.filter(({ runId }) => runId !== exceptRunId)
+		);
+}
+
+const leftOutFor = ({ runId, sticker }: KeptReading, why: LeftOutWhy) => ({ runId, sticker, why });
+
+function sayOf(model: Model, candidates: readonly Candidate[], unusable: KeptSay['leftOut']): ResistanceSay {
 	const far = farFromRest(candidates);
-	for (const { reading } of far) leaveOut(reading, 'far-from-rest');
 	const used = candidates.filter((candidate) => !far.includes(candidate));
 	// Each went through by itself, so all of them do.
 	const fitted =
@@ -150,7 +169,7 @@ export function resistanceSay(
 			const { runId, sticker, turns } = reading;
 			return [{ runId, sticker, turns, ohmAt20C: coil.ohmAt20C, ...part }];
 		}),
-		leftOut
+		leftOut: [...unusable, ...far.map(({ reading }) => leftOutFor(reading, 'far-from-rest'))]
 	};
 }
 

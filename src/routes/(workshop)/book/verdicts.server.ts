@@ -5,7 +5,7 @@ import { findRevision, keptReadings } from '../../../lib/server/db/specs.ts';
 import { findSpool } from '../../../lib/server/db/spools.ts';
 import type { SpecContent, SpecWire } from '../../../lib/spec/content.ts';
 import { expectedCoil, readAt20C, verdictOf } from '../../../lib/spec/judged.ts';
-import { keptWithout, resistanceSay, type KeptReading } from '../../../lib/spec/kept.ts';
+import { resistanceSays } from '../../../lib/spec/kept.ts';
 
 /** What the lines of the bench book measured, against what was expected of them. Ohms at 20 °C, ± as standard uncertainties. */
 
@@ -27,57 +27,58 @@ type Trx = Parameters<typeof findSpool>[0];
 interface Known {
 	content: SpecContent;
 	wire: SpecWire | null;
-	kept: readonly KeptReading[];
-	calibration: Calibration | null;
-	/** By turns on the bobbin, of coils that are not among `kept`: they are all expected alike. */
-	expected: Map<number, Predicted | null>;
+	/** Runs of the kept coils that teach. */
+	taught: ReadonlySet<string>;
+	/** The calibration for a run of `taught`; null: for any other. */
+	calibrationFor: (runId: string | null) => Calibration | null;
+	/** By turns on the bobbin, for coils that are not among `taught`: they are all expected alike. */
+	alike: Map<number, Predicted | null>;
 }
 
 /** After so many lines whoever else waits for this process has a turn. */
 const linesAtOnce = 20;
-/** Revisions with a spool that are kept in mind, some 100 kB each: lines of one stand together in a book sorted by date. */
-const knownMax = 50;
 
 /** One verdict for each line, in their order; a coil never speaks for itself. */
 export async function verdictsOf(trx: Trx, workshopId: string, lines: readonly BookLine[]): Promise<LineVerdict[]> {
-	const known = new Map<string, Known | null>();
-	const verdicts: LineVerdict[] = [];
-	for (const [i, line] of lines.entries()) {
-		verdicts.push(verdictOfLine(line, await knownOf(trx, workshopId, line, known)));
-		if (i % linesAtOnce === linesAtOnce - 1) await new Promise((resolve) => setImmediate(resolve));
+	const verdicts: LineVerdict[] = new Array(lines.length);
+	let done = 0;
+	// One revision and spool after another: each is read once and forgotten, however many there are.
+	for (const places of placesByGroup(lines).values()) {
+		const known = await knownOf(trx, workshopId, lines[places[0]!]!);
+		for (const i of places) {
+			verdicts[i] = verdictOfLine(lines[i]!, known);
+			if (++done % linesAtOnce === 0) await new Promise((resolve) => setImmediate(resolve));
+		}
 	}
 	return verdicts;
 }
 
-async function knownOf(
-	trx: Trx,
-	workshopId: string,
-	{ spec, spoolId }: BookLine,
-	known: Map<string, Known | null>
-): Promise<Known | null> {
-	if (!spec) return null;
-	const key = `${spec.id} ${spec.no} ${spoolId}`;
-	const before = known.get(key);
-	const found = before === undefined ? await readKnown(trx, workshopId, spec, spoolId) : before;
-	// What was asked for last stands last, so that the first is the one nobody asked for longest.
-	known.delete(key);
-	known.set(key, found);
-	if (known.size > knownMax) known.delete(known.keys().next().value!);
-	return found;
+function placesByGroup(lines: readonly BookLine[]): Map<string, number[]> {
+	const groups = new Map<string, number[]>();
+	for (const [i, { spec, spoolId }] of lines.entries()) {
+		const key = spec ? `${spec.id} ${spec.no} ${spoolId}` : '';
+		const places = groups.get(key);
+		if (places) places.push(i);
+		else groups.set(key, [i]);
+	}
+	return groups;
 }
 
-async function readKnown(
-	trx: Trx,
-	workshopId: string,
-	spec: NonNullable<BookLine['spec']>,
-	spoolId: string | null
-): Promise<Known | null> {
-	const revision = await findRevision(trx, workshopId, spec.id, spec.no);
+async function knownOf(trx: Trx, workshopId: string, { spec, spoolId }: BookLine): Promise<Known | null> {
+	const revision = spec && (await findRevision(trx, workshopId, spec.id, spec.no));
 	if (!revision) return null;
 	const { content } = revision;
 	const wire = spoolId === null ? null : ((await findSpool(trx, workshopId, spoolId))?.wire ?? null);
 	const kept = await keptReadings(trx, workshopId, { bobbinName: content.bobbin.name, spoolId });
-	return { content, wire, kept, calibration: resistanceSay(content, wire, kept).calibration, expected: new Map() };
+	const says = resistanceSays(content, wire, kept);
+	const all = says(null);
+	return {
+		content,
+		wire,
+		taught: new Set([...all.used, ...all.leftOut].map(({ runId }) => runId)),
+		calibrationFor: (runId) => (runId === null ? all : says(runId)).calibration,
+		alike: new Map()
+	};
 }
 
 function verdictOfLine(line: BookLine, known: Known | null): LineVerdict {
@@ -94,17 +95,12 @@ function verdictOfLine(line: BookLine, known: Known | null): LineVerdict {
 }
 
 function predictedOf({ id, onBobbin }: BookLine, known: Known): Predicted | null {
-	const { content, wire, kept, expected } = known;
-	const others = keptWithout(kept, id);
-	const predict = (calibration: Calibration | null): Predicted | null => {
-		const by = expectedCoil(content, onBobbin, { wire, calibration });
+	const { content, wire, taught, calibrationFor, alike } = known;
+	const predict = (runId: string | null): Predicted | null => {
+		const by = expectedCoil(content, onBobbin, { wire, calibration: calibrationFor(runId) });
 		return by.ok ? { ohm: by.value.ohm, uncertaintyOhm: by.value.uncertaintyOhm } : null;
 	};
-	if (others !== kept) return predict(resistanceSay(content, wire, others).calibration);
-	let alike = expected.get(onBobbin);
-	if (alike === undefined) {
-		alike = predict(known.calibration);
-		expected.set(onBobbin, alike);
-	}
-	return alike;
+	if (taught.has(id)) return predict(id);
+	if (!alike.has(onBobbin)) alike.set(onBobbin, predict(null));
+	return alike.get(onBobbin) ?? null;
 }

@@ -19,13 +19,7 @@ import {
 	type ExpectedCoil,
 	type Side
 } from '../../../../lib/spec/judged.ts';
-import {
-	keptWithout,
-	resistanceSay,
-	type KeptReading,
-	type KeptSay,
-	type LeftOutWhy
-} from '../../../../lib/spec/kept.ts';
+import { resistanceSays, type KeptReading, type KeptSay, type LeftOutWhy } from '../../../../lib/spec/kept.ts';
 import { predictCoil } from '../../../../lib/spec/model.ts';
 
 /** Everything a run's page says of what its coil should measure, and of what it did. SI. */
@@ -175,7 +169,8 @@ function expectationOf(
 	kept: readonly KeptReading[],
 	runId: string
 ): Expectation {
-	const { calibration, used, leftOut } = resistanceSay(content, wire, keptWithout(kept, runId));
+	const says = resistanceSays(content, wire, kept);
+	const { calibration, used, leftOut } = says(runId);
 	const by = expectedCoil(content, turns, { wire, calibration });
 	const without = calibration && expectedCoil(content, turns, { wire });
 	const all = predictCoil(content, turns, { wire });
@@ -195,7 +190,7 @@ function expectationOf(
 			}))
 		},
 		leftOut: leftOut.filter(({ why }) => why !== 'no-resistance'),
-		teachesNot: resistanceSay(content, wire, kept).leftOut.find((coil) => coil.runId === runId)?.why ?? null,
+		teachesNot: says(null).leftOut.find((coil) => coil.runId === runId)?.why ?? null,
 		outerWidthM: all.ok ? all.value.figures.outerWidthM : null,
 		inductanceH: all.ok ? all.value.figures.inductanceH : null
 	};
