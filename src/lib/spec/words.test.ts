@@ -201,6 +201,7 @@ describe('a refusal in words', () => {
 		expect(says({ ok: false, field: 'temperatureC', min: -40, max: 150, got: 200 }, imperial)).toContain(
 			'between -40 °F and 302 °F; it is 392 °F'
 		);
+		expect(says({ ok: false, field: 'resistanceOhm', min: 270, max: 350_000, got: -1000 })).toContain('it is −1000 Ω');
 		expect(says({ ok: false, field: 'wire.awg', min: 12, max: 58, got: 60 })).toContain('between AWG 12 and AWG 58');
 		expect(says({ ok: false, field: 'load.volumePotOhm', min: 100, max: 1e12, got: 5 })).toContain(
 			'must be at least 100 Ω; it is 5 Ω'

@@ -374,7 +374,7 @@ export function refusedSentence(refused: Refused, units: UnitPreference): string
 	}
 	const subject = `${name}${coilOf(field)}`;
 	const is = /^The (?:turns|meter’s counts)/.test(name) ? 'they are' : 'it is';
-	const came = got === null ? 'there is no number' : `${is} ${show(got, units)}`;
+	const came = got === null ? 'there is no number' : `${is} ${show(got, units).replace(/^-/, '−')}`;
 	const range =
 		max >= endless || (field === 'spacingM' && got !== null && got < min)
 			? `must be at least ${show(min, units)}`
