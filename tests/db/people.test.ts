@@ -1,6 +1,8 @@
 import { afterAll, beforeEach, beforeAll, describe, expect, it } from 'vitest';
 import { hashPassword, verifyPassword } from '../../src/lib/server/auth/passwords.ts';
 import { hashToken, newToken } from '../../src/lib/server/auth/tokens.ts';
+import { usualUnits } from '../../src/lib/coil/units.ts';
+import { inWorkshop } from '../../src/lib/server/db/connect.ts';
 import {
 	addPerson,
 	changeName,
@@ -17,6 +19,7 @@ import {
 	type SessionClaims
 } from '../../src/lib/server/db/people.ts';
 import type { Role } from '../../src/lib/server/db/schema.ts';
+import { setUnits } from '../../src/lib/server/db/units.ts';
 import { freshDatabase, type TestDatabase } from './harness.ts';
 
 let db: TestDatabase;
@@ -71,7 +74,7 @@ describe('a session', () => {
 		expect(await findSignIn(db.app, 'ada\u0000@hollow-lane.example')).toBeNull();
 	});
 
-	it('finds its member with the workshop’s name and zone', async () => {
+	it('finds its member with the workshop’s name and zone, and units', async () => {
 		const ada = await join(workshop, 'owner', 'Ada Quill');
 		expect(await findMember(db.app, await claimsOf(ada))).toEqual({
 			workshopId: workshop,
@@ -80,8 +83,21 @@ describe('a session', () => {
 			role: 'owner',
 			email: ada.email,
 			workshopName: 'Hollow Lane workshop',
-			timeZone: 'Europe/London'
+			timeZone: 'Europe/London',
+			units: usualUnits
 		});
+	});
+	it('shows values in the units its member chose, and in the usual ones where what is stored is none', async () => {
+		const ada = await join(workshop, 'owner', 'Ada Quill');
+		const chosen = { ...usualUnits, length: 'inch', mass: 'ounce' } as const;
+		await inWorkshop(db.app, workshop, (trx) => setUnits(trx, workshop, ada.id, chosen));
+		expect((await findMember(db.app, await claimsOf(ada)))?.units).toEqual(chosen);
+		await db.owner
+			.updateTable('member')
+			.set({ units: JSON.stringify({ length: 'ell' }) })
+			.where('id', '=', ada.id)
+			.execute();
+		expect((await findMember(db.app, await claimsOf(ada)))?.units).toEqual(usualUnits);
 	});
 	it('of one workshop finds nobody when it claims another', async () => {
 		const claims = await claimsOf(await join(workshop, 'owner'));
