@@ -1,6 +1,14 @@
 import { describe, expect, it } from 'vitest';
 import type { SpecContent } from './content.ts';
-import { apartFromRestMax, calibrationOf, figuresApartMax, packingHalfWidthMin, type KeptReading } from './kept.ts';
+import {
+	apartFromRestMax,
+	calibrationOf,
+	figuresApartMax,
+	packingHalfWidthMin,
+	resistanceSay,
+	resistanceSays,
+	type KeptReading
+} from './kept.ts';
 import { predictCoil, predictSpec } from './model.ts';
 import { startingSpec } from './start.ts';
 
@@ -157,6 +165,22 @@ describe('a coil that teaches nothing is named with the reason', () => {
 		expect(leftOut.map((one) => one.why)).toEqual(['spec-refused', 'spec-refused']);
 		expect(calibration).toBeNull();
 	});
+});
+
+it('what the others say to one of them is what they say without it', () => {
+	const kept = [1, 1.004, 0.8, 0.996, 1.06, 2].map((ratio) => coil({ ohmAt20C: ratio * modelledOhm }));
+	const says = resistanceSays(content, null, kept);
+	expect(says(null)).toEqual(resistanceSay(content, null, kept));
+	expect(says(null).leftOut).toHaveLength(3);
+	for (const { runId } of kept) {
+		expect(says(runId)).toEqual(
+			resistanceSay(
+				content,
+				null,
+				kept.filter((other) => other.runId !== runId)
+			)
+		);
+	}
 });
 
 describe('a coil that reads far from the rest', () => {

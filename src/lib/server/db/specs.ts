@@ -381,7 +381,7 @@ export async function keptReadings(
 		.orderBy('run_id')
 		.orderBy('kind')
 		.orderBy('taken_at', 'desc')
-		.orderBy('id', 'desc')
+		.orderBy('id')
 		.execute();
 	return runs.map((run): KeptReading => {
 		const of = (kind: ReadingTable['kind']) =>
