@@ -2,7 +2,7 @@ import { describe, expect, it } from 'vitest';
 import { usualUnits } from '../coil/units.ts';
 import { kinds } from './content.ts';
 import { specListing, specSentence } from './listing.ts';
-import { startingSpec } from './start.ts';
+import { startingSpec, tableWire } from './start.ts';
 
 const two = startingSpec('two-coils', 'Evening bridge');
 const value = (title: string, label: string, content = two) =>
@@ -49,5 +49,10 @@ describe('a spec as a list', () => {
 		expect(specSentence(content, usualUnits)).toBe(
 			'Two coils, in series; AWG 42, single, polyurethane; Alnico 5 bar; strings 10.4 mm apart.'
 		);
+	});
+
+	it('tells the wire of the spool it is reckoned with', () => {
+		const spool = tableWire('awg-43', 'heavy', 'oleoresinous');
+		expect(specSentence(two, usualUnits, spool)).toMatch(/; AWG 43, heavy, plain oleoresinous; /);
 	});
 });

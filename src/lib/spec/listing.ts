@@ -1,5 +1,5 @@
 import type { UnitPreference } from '../coil/units.ts';
-import type { SpecContent } from './content.ts';
+import type { SpecContent, SpecWire } from './content.ts';
 import {
 	bobbinOptions,
 	coilCountOptions,
@@ -163,9 +163,14 @@ export function specListing(content: SpecContent, units: UnitPreference, spoolNa
 	return [pickup!, ...coils, ...rest].filter(({ rows }) => rows.length > 0);
 }
 
-/** One line under a spec's name: kind, wire, magnet, string spacing. */
-export function specSentence(content: SpecContent, units: UnitPreference): string {
-	const { kind, coils, wiring, wire, magnet, strings } = content;
+/**
+ * One line under a spec's name: kind, wire, magnet, string spacing.
+ *
+ * @param spoolWire the spool's wire where one is reckoned with
+ */
+export function specSentence(content: SpecContent, units: UnitPreference, spoolWire: SpecWire | null = null): string {
+	const { kind, coils, wiring, magnet, strings } = content;
+	const wire = spoolWire ?? content.wire;
 	const joined = coils.length === 2 ? `, ${wiringOptions.find(({ value }) => value === wiring)!.label}` : '';
 	const shape = magnet.shape === 'none' || magnet.shape === 'other' ? '' : magnet.shape;
 	const spacing =
