@@ -315,6 +315,8 @@ describe('winding by a spec', () => {
 		expect(waiting[1]!.fullTurns).not.toBe(fullTurnsOf(evening()));
 		expect(waiting[2]).toMatchObject({
 			target: 4850,
+			// The early look is the first coil's alone.
+			firstLook: 0,
 			direction: 'clockwise',
 			toleranceTurns: 3,
 			note: '',

@@ -29,7 +29,7 @@ export function takeCoil(
 	const { s } = d;
 	const fresh = s.lastEndedAt === null || now - s.lastEndedAt > sessionRestMs;
 	const { target } = coil.plan;
-	const run = newRun(coil.runId, coil.plan, coil.sticker, now, fresh ? firstLookOf(coil.plan) : 0);
+	const run = newRun(coil.runId, coil.plan, coil.sticker, now, firstLookOf(coil.plan, fresh));
 
 	const boot = s.boots[0];
 	if (boot) {
@@ -62,11 +62,12 @@ export function takeCoil(
 }
 
 /**
- * The early look of a session's first coil, 0 for none: only where it comes before the interval would bring one anyway, and
- * in the first half of the coil. A plan that asks for none by interval has one only where it says so.
+ * The early look of a coil, 0 for none: the one its plan asks for, or the usual one on a session's first coil. Only where it
+ * comes before the interval would bring one anyway, and in the first half of the coil. A plan that asks for none by interval
+ * has one only where it says so.
  */
-function firstLookOf({ firstLook, lookEvery, target }: CoilPlan): number {
-	const first = firstLook ?? (lookEvery > 0 ? firstLookTurns : 0);
+function firstLookOf({ firstLook, lookEvery, target }: CoilPlan, fresh: boolean): number {
+	const first = firstLook ?? (fresh && lookEvery > 0 ? firstLookTurns : 0);
 	return (lookEvery === 0 || first < lookEvery) && 2 * first < target ? first : 0;
 }
 

@@ -59,7 +59,7 @@ export interface CoilPlan {
 	topFaces: TopFaces;
 	/** On count within this many turns either side. */
 	toleranceTurns: number;
-	/** Turns of one early look on the first coil of a session, 0 for none; null: the usual one. */
+	/** Turns of one early look, 0 for none; null: the usual one on the first coil of a session. */
 	firstLook: number | null;
 	/** Turns at which the wire reaches the flange; null: not known. */
 	fullTurns: number | null;

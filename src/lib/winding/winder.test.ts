@@ -79,6 +79,18 @@ describe('a coil from start to kept', () => {
 		expect(bench.run.nextLook).toBe(500);
 	});
 
+	it('is looked at early where its spec says so, whatever was wound just before', () => {
+		const bench = started();
+		bench.turn(1200);
+		bench.stand();
+		bench.tap({ kind: 'keep' });
+		bench.wait(300);
+		bench.tick();
+		bench.coil({ firstLook: 120 }, 'run-2');
+		bench.wait(11_000);
+		expect(bench.run).toMatchObject({ runId: 'run-2', firstLook: 120, nextLook: 120 });
+	});
+
 	it('is looked at early where its spec says so, or not at all', () => {
 		expect(started({}, { firstLook: 250 }).run).toMatchObject({ firstLook: 250, nextLook: 250 });
 		expect(started({}, { firstLook: 0 }).run).toMatchObject({ firstLook: 0, nextLook: 500 });

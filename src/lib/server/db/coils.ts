@@ -28,7 +28,7 @@ export interface SpecRef {
 export interface FromSpec {
 	spec: SpecRef | null;
 	spoolId: string | null;
-	/** Turns of one early look on the first coil of a session; null: the usual ones, 0: none. */
+	/** Turns of one early look, 0 for none; null: the usual one on the first coil of a session. */
 	firstLook: number | null;
 	/** Turns at which the wire reaches the flange; null: unknown. */
 	fullTurns: number | null;

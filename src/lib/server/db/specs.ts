@@ -305,7 +305,8 @@ export async function windSpec(
 					createdBy: by,
 					spec: { id: specId, no, coil: i },
 					spoolId,
-					firstLook: content.looks.first,
+					// The first bobbin of what is wound together shows whether all is set up right.
+					firstLook: coils.length === 0 ? content.looks.first : 0,
 					fullTurns
 				}
 			);
