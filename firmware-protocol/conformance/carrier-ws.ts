@@ -21,10 +21,11 @@ export async function openWs(url: URL, tell: (text: string) => void): Promise<Ca
 		maxPayload: messageBytesMax,
 		perMessageDeflate: false,
 		handleProtocols: (offered) => (offered.has(subprotocol) ? subprotocol : false),
-		verifyClient: ({ req }: { req: IncomingMessage }) =>
-			String(req.headers['sec-websocket-protocol'] ?? '')
-				.split(/\s*,\s*/)
-				.includes(subprotocol)
+		verifyClient({ req }: { req: IncomingMessage }, answer: (taken: boolean, status?: number, text?: string) => void) {
+			const offered = String(req.headers['sec-websocket-protocol'] ?? '').split(/\s*,\s*/);
+			if (offered.includes(subprotocol)) answer(true);
+			else answer(false, 400, `This link speaks the subprotocol ${subprotocol}.`);
+		}
 	});
 	await new Promise<void>((resolve, reject) => {
 		server.once('listening', resolve);

@@ -32,8 +32,9 @@ async function run({ way, level, recordFile }: Command): Promise<number> {
 	const carrier = await open(way);
 	let session;
 	try {
-		// Ids grow from command to command: seconds are beyond what another host counted up to.
-		session = await play(carrier, { level, firstId: Math.floor(Date.now() / 1000), tell });
+		// Ids grow from command to command, also from one run to the next in the same boot: tenths of a second do.
+		const firstId = Math.floor(Date.now() / 100) % 2 ** 32;
+		session = await play(carrier, { level, firstId, tell });
 		mustHaveStarted(carrier);
 		const why = carrier.gone();
 		if (why !== null) tell(`The session ended early: ${why}.`);

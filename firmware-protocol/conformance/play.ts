@@ -27,6 +27,8 @@ export const turnsAsked = 10;
 const turnsEnough = 8;
 /** Without ticks in between it stands. */
 const stillMs = 1_500;
+/** A step of 2^30 leads out of the half of all numbers that lies behind in two tries. */
+const idTriesMax = 3;
 /** Where nothing must be answered, so long is listened. */
 const silenceMs = answerMsMax + 50;
 
@@ -150,6 +152,10 @@ class Host {
 		await this.answer(no, answerMsMax, (line) => (line.verb === 'OK' || line.verb === 'NO') && line.id === id);
 	}
 
+	isOvertaken(id: number): boolean {
+		return this.heard.some(({ line }) => line.verb === 'NO' && line.id === id && line.why === 'old');
+	}
+
 	/** Events of this boot, each once. */
 	events(after = 0): Event[] {
 		const found = new Map<number, Event>();
@@ -198,10 +204,16 @@ async function script(host: Host, { level, firstId, tell }: PlayOptions): Promis
 
 	const plan = (id: number, more: Partial<SetPlan> = {}): string =>
 		formatLine({ verb: 'SET', id, b, tgt: host.net + 8000, look: 500, ease: 40, stop: 3, from: host.net, ...more });
-	const id = (step: number) => (firstId + step) % 2 ** 32;
+	let idBase = firstId;
+	const id = (step: number) => (idBase + step) % 2 ** 32;
 
 	tell('Asking for plans, and for things that must be refused.');
-	await host.command(plan(id(10)), id(10));
+	for (let tries = 0; tries < idTriesMax; tries++) {
+		await host.command(plan(id(10)), id(10));
+		if (!host.isOvertaken(id(10))) break;
+		// Another host of this boot counted further: numbers go on well beyond it.
+		idBase += 2 ** 30;
+	}
 	await host.command(plan(id(10)), id(10));
 	const other = `${b[0] === '0' ? '1' : '0'}${b.slice(1)}`;
 	await host.command(plan(id(12), { b: other }), id(12));

@@ -86,7 +86,7 @@ interface Facts {
 	boot: string | null;
 	/** The first HI. */
 	birth: Hi | null;
-	/** The HI of each new link. */
+	/** The first HI of each link; what came before it may be lines sent again, of which nobody knows what they follow. */
 	births: Heard<Hi>[];
 	events: Heard<Event>[];
 	/** Events, each the first time. */
@@ -368,7 +368,10 @@ export const rules: readonly Rule[] = [
 		says: 'A key it does not know is ignored, and the line acted on',
 		level: 'full',
 		look(facts) {
-			const plain = facts.said.find((said) => ownSet(facts, said) && said.probe === undefined);
+			const key = facts.said.find(({ probe }) => probe === 'unknown-key');
+			const plain = facts.said.findLast(
+				(said) => ownSet(facts, said) && said.probe === undefined && said.no < (key?.no ?? 0)
+			);
 			const usual = plain && answerTo(facts, plain);
 			return asked(
 				facts,
@@ -469,7 +472,7 @@ function factsOf({ entries, endedMs }: Session, level: Level): Facts {
 		fresh,
 		boot: heard.find(({ line }) => line.b !== undefined)?.line.b ?? null,
 		birth: his[0]?.line ?? null,
-		births: links.flatMap((link) => heard.find(({ no }) => no > link.no) ?? []).filter(isHi),
+		births: links.flatMap((link) => his.find(({ no }) => no > link.no) ?? []),
 		events,
 		newEvents: fresh.filter(isEvent),
 		turns: totals.length > 0 ? Math.max(...totals) - totals[0]! : 0
@@ -589,6 +592,7 @@ function lineNumbers({ fresh, refused, births }: Facts): Finding {
 		const before = byNumber.get(`${b} ${n}`);
 		if (before) return fail(`n=${n} stands on two different lines`, before.no, one.no);
 		byNumber.set(`${b} ${n}`, one);
+		if (birth === 0) continue;
 		if (top?.b !== b || n > top.n) {
 			const from: { no: number; b: string; n: number } | null = top;
 			// What was spoilt on the way had a number too.
@@ -598,12 +602,12 @@ function lineNumbers({ fresh, refused, births }: Facts): Finding {
 			shown.push(one.no);
 		} else if (n > kept) return fail(`${verb} n=${n} came for the first time after n=${top.n}`, top.no, one.no);
 	}
-	return shown.length > 1 ? pass(shown[0]!, shown.at(-1)!) : notShown('fewer than two lines were heard');
+	return shown.length > 1 ? pass(shown[0]!, shown.at(-1)!) : notShown('fewer than two lines came after a HI');
 }
 
 function eventNumbers(facts: Facts): Finding {
 	const { fresh, newEvents, refused, birth, endedMs } = facts;
-	let top: { e: number; no: number } = { e: birth?.e ?? 0, no: 0 };
+	let top = { e: birth?.e ?? (newEvents[0]?.line.e ?? 1) - 1, no: 0 };
 	for (const { no, line } of newEvents) {
 		if (line.e <= top.e) {
 			const other = newEvents.find((one) => one.no < no && one.line.b === line.b && one.line.e === line.e);

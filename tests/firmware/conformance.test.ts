@@ -10,7 +10,7 @@ import { play, sessionMsMax } from '../../firmware-protocol/conformance/play.ts'
 import { isProved } from '../../firmware-protocol/conformance/report.ts';
 import { judge, rules, type Level, type Verdict } from '../../firmware-protocol/conformance/rules.ts';
 import type { Session } from '../../firmware-protocol/conformance/session.ts';
-import { crc16Xmodem, crcText, withChecksum } from '../../src/lib/turnline/index.ts';
+import { crc16Xmodem, crcText, formatLine, withChecksum } from '../../src/lib/turnline/index.ts';
 import { coreFolder } from './toolchain.ts';
 
 const core = (options = '') => `${join(inject('firmware'), 'winder-32')} --script --boot 5C0E91A7 ${options}`;
@@ -80,6 +80,18 @@ describe('the core in front of the conformance host', () => {
 			rules.filter((rule) => level === 'full' || rule.level === 'basic').map(({ id }) => id)
 		);
 		expect(session.endedMs).toBeLessThan(sessionMsMax);
+	});
+
+	it('where another host of the same boot counted its commands further', async () => {
+		const driven = openDriven(core());
+		try {
+			driven.send([formatLine({ verb: 'SET', id: 2_000_000_000, b: '5C0E91A7', tgt: 9, look: 0, ease: 0, stop: 0 })]);
+			const session = await play(driven, { level: 'full', firstId: 1000, tell: () => {} });
+			expect(judge(session, 'full').filter(({ result }) => result !== 'pass')).toEqual([]);
+			expect(session.entries.some(({ text }) => text.includes(` id=${2 ** 30 + 1010} `))).toBe(true);
+		} finally {
+			await driven.close();
+		}
 	});
 
 	it('with several magnets a turn as well', async () => {
