@@ -1,43 +1,54 @@
 import { openLinePort } from '../../src/lib/serial/index.ts';
-import { Inbox, NoWinder, realClock, type Carrier } from './carrier.ts';
+import { Inbox, NoWinder, realClock, winderMsMax, type Carrier } from './carrier.ts';
 
-/** A port that is there opens well within this. */
-const openMsMax = 5_000;
-
-/** A winder at a serial port. Throws NoWinder, with what to do, when the port does not open. */
-export async function openSerial(path: string): Promise<Carrier> {
+/**
+ * A winder at a serial port. Says what stands in the way and waits for the port; throws NoWinder when it does not open in time.
+ *
+ * @param waitMs how long it waits
+ */
+export async function openSerial(
+	path: string,
+	tell: (text: string) => void,
+	waitMs: number = winderMsMax
+): Promise<Carrier> {
 	const inbox = new Inbox();
-	const nowMs = realClock();
+	let nowMs = realClock();
 	let lost = false;
-	let opened: () => void;
+	let late: NodeJS.Timeout | undefined;
+	let answer: (open: boolean) => void;
 	const open = new Promise<boolean>((resolve) => {
-		opened = () => resolve(true);
-		setTimeout(() => resolve(false), openMsMax).unref();
+		answer = resolve;
+		late = setTimeout(() => resolve(false), waitMs);
 	});
 	const port = openLinePort(path, {
 		opened: () => {
-			inbox.add({ atMs: nowMs(), from: 'cable', text: `${path} was opened` });
-			opened();
+			clearTimeout(late);
+			if (lost) return;
+			nowMs = realClock();
+			inbox.add({ atMs: 0, from: 'cable', text: `${path} was opened` });
+			answer(true);
 		},
 		lines: (lines) => inbox.add(...lines.map(({ text }) => ({ atMs: nowMs(), from: 'winder' as const, text }))),
 		dropped: (why, count) => {
 			for (let line = 0; line < count; line++) inbox.add({ atMs: nowMs(), from: 'winder', text: '', dropped: why });
 		},
+		// Opened again it would be another session.
 		lost: () => {
 			lost = true;
 			inbox.wake();
+		},
+		trouble: (trouble) => {
+			if (trouble && !lost) tell(trouble.text);
 		}
 	});
 	if (!(await open)) {
-		const why = port.state().trouble?.text ?? `${path} does not open.`;
 		await port.close();
-		throw new NoWinder(why);
+		throw new NoWinder(`${path} did not open within ${waitMs / 1000} s. No session was begun.`);
 	}
-	const gone = () => (lost ? 'the cable was pulled, or the board went away' : null);
 	return {
 		wantsAcks: false,
-		nowMs,
-		gone,
+		nowMs: () => nowMs(),
+		gone: () => (lost ? 'the cable was pulled, or the board went away' : null),
 		take: () => inbox.take(),
 		send: (texts) => void port.write(texts),
 		pass: (ms) => (lost ? Promise.resolve() : inbox.sleep(ms)),

@@ -1,10 +1,7 @@
 import type { IncomingMessage } from 'node:http';
 import { WebSocketServer, type WebSocket } from 'ws';
 import { messageBytesMax, messageLinesMax, pingSeconds, subprotocol } from '../../src/lib/turnline/index.ts';
-import { Inbox, NoWinder, realClock, type Carrier } from './carrier.ts';
-
-/** A winder on Wi-Fi tries again within half a minute, as a rule. */
-const connectMsMax = 60_000;
+import { Inbox, NoWinder, realClock, winderMsMax, type Carrier } from './carrier.ts';
 
 /**
  * Listens where a winder is told that Turnstead is, and waits for it. It is the winder that opens a link; any link key will do.
@@ -45,7 +42,7 @@ export async function openWs(url: URL, tell: (text: string) => void): Promise<Ca
 		await new Promise<void>((resolve) => server.close(() => resolve()));
 	};
 	const connected = new Promise<boolean>((resolve) => {
-		const late = setTimeout(() => resolve(false), connectMsMax);
+		const late = setTimeout(() => resolve(false), winderMsMax);
 		server.on('connection', (socket) => {
 			// One winder at a time; its newest link counts.
 			link?.terminate();
@@ -65,7 +62,7 @@ export async function openWs(url: URL, tell: (text: string) => void): Promise<Ca
 		});
 	});
 	tell(
-		`Waiting for the winder at ws://${url.hostname}:${port}${url.pathname}, ${connectMsMax / 1000} s at most. Let it connect there; any link key will do.`
+		`Waiting for the winder at ws://${url.hostname}:${port}${url.pathname}, ${winderMsMax / 1000} s at most. Let it connect there; any link key will do.`
 	);
 	if (!(await connected)) {
 		await close();

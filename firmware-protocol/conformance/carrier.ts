@@ -21,6 +21,9 @@ export interface Carrier {
 
 export type Heard = Pick<Entry, 'atMs' | 'text' | 'dropped'> & { from: 'winder' | 'link' | 'cable' };
 
+/** How long a winder is waited for: it is plugged in meanwhile, and one on Wi-Fi tries again within half a minute, as a rule. */
+export const winderMsMax = 60_000;
+
 /** Why no session could begin: the person is told, and nothing is judged. */
 export class NoWinder extends Error {}
 

@@ -55,7 +55,7 @@ async function run({ way, level, recordFile }: Command): Promise<number> {
 }
 
 function open(way: Command['way']): Carrier | Promise<Carrier> {
-	if (way.kind === 'port') return openSerial(way.path);
+	if (way.kind === 'port') return openSerial(way.path, tell);
 	if (way.kind === 'url') return openWs(way.url, tell);
 	return way.driven ? openDriven(way.program) : openExec(way.program);
 }
