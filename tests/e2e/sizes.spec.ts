@@ -1,4 +1,8 @@
 import type { Page } from '@playwright/test';
+import { inWorkshop } from '../../src/lib/server/db/connect.ts';
+import { addSpec } from '../../src/lib/server/db/specs.ts';
+import { addSpool } from '../../src/lib/server/db/spools.ts';
+import { startingSpec } from '../../src/lib/spec/start.ts';
 import { BenchPage } from './bench-page.ts';
 import { HandWinder, handSettings } from './hand-winder.ts';
 import { expect, test } from './fixtures.ts';
@@ -283,7 +287,28 @@ for (const screen of screens) {
 				.select('id')
 				.where('workshop_id', '=', workshop.id)
 				.execute();
+			const long = startingSpec('two-coils', 'W'.repeat(80));
+			for (const coil of long.coils) coil.name = 'W'.repeat(80);
+			long.bobbin = { ...long.bobbin, name: 'W'.repeat(80), generic: null };
+			const specId = await inWorkshop(server.database.owner, workshop.id, async (trx) => {
+				const id = await addSpec(trx, workshop.id, long, null);
+				await addSpool(
+					trx,
+					workshop.id,
+					{ name: 'W'.repeat(80), lot: 'W'.repeat(80), wire: long.wire, note: '' },
+					null
+				);
+				return id;
+			});
 			const paths = [
+				'/specs',
+				'/specs/new',
+				'/specs/new?start=one-coil',
+				`/specs/${specId}`,
+				`/specs/${specId}/revisions/1`,
+				`/specs/${specId}/compare`,
+				'/spools',
+				'/workshop/meters',
 				'/wind',
 				'/book',
 				`/book/${runId}`,
