@@ -18,6 +18,11 @@ import { boardOf, boardText, sameBoard, systemPlaces, usbPorts, type Board, type
 
 /** How soon a port is looked for again. */
 const againMs = 500;
+/**
+ * How often an open port is asked whether it is still there. A port that was pulled in the middle of a read answers that
+ * nothing came, for ever, and is never reported as gone.
+ */
+const thereMs = 500;
 /** A board that takes nothing must not fill the memory with what it is told. */
 const unwrittenBytesMax = 4_096;
 /** How long an error in the words of the system may be. */
@@ -150,6 +155,7 @@ export function openLinePort(path: string, events: LinePortEvents, places: TtyPl
 		}
 		if (!opened.isOpen) return { kind: 'missing', text: missingText(path, places) };
 		listen(opened);
+		watch(opened, at);
 		port = opened;
 		openAs = at;
 		board = boardOf(at, places) ?? board;
@@ -206,6 +212,15 @@ export function openLinePort(path: string, events: LinePortEvents, places: TtyPl
 		});
 	};
 
+	/** Closes a port whose device is gone, or is another one of the same name. */
+	const watch = (opened: SerialPort, at: string) => {
+		const device = deviceAt(at);
+		const asking = setInterval(() => {
+			if (opened.isOpen && deviceAt(at) !== device) opened.close(() => {});
+		}, thereMs);
+		opened.on('close', () => clearInterval(asking));
+	};
+
 	opening = attempt();
 
 	return {
@@ -235,6 +250,12 @@ function closed(port: SerialPort): Promise<void> {
 		if (!port.isOpen) return resolve();
 		port.close(() => resolve());
 	});
+}
+
+/** What tells the device behind a name from any other; null: there is none. */
+function deviceAt(path: string): string | null {
+	const found = statSync(path, { throwIfNoEntry: false });
+	return found ? `${found.dev} ${found.ino} ${found.rdev}` : null;
 }
 
 /** Switches "hang up on close" off. Where it cannot be done closing may reset the board, and all else works. */
