@@ -50,12 +50,12 @@ export default mergeConfig(
 				{
 					extends: true,
 					test: {
-						// Kills servers and databases: one file at a time, against the build.
+						// Kills servers, databases and bridges of its own, against the build; mostly it waits.
 						name: 'faults',
 						environment: 'node',
 						include: ['tests/faults/**/*.test.ts'],
 						globalSetup: ['tests/db/global-setup.ts'],
-						fileParallelism: false
+						maxWorkers: 2
 					}
 				}
 			]
