@@ -20,8 +20,6 @@ export interface MeterTyped {
 /** By the name of the field: `name`, `upTo-0`, `percent-0`… */
 export type MeterErrors = Record<string, string>;
 
-export const blankRange: RangeTyped = { upTo: '', percent: '', counts: '', digit: '' };
-
 /** A small digital meter of 2,000 counts. From memory: every meter's own sheet says better. */
 const usualRanges: readonly MeterRange[] = [2_000, 20_000, 200_000].map((upToOhm) => ({
 	upToOhm,
